@@ -1,0 +1,1 @@
+"""Ready case files in an invented scenario."""

@@ -1,0 +1,1 @@
+"""Case files, stores, figures and the command line."""

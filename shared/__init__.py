@@ -1,0 +1,1 @@
+"""Data that engine, io, cases and tests share."""
