@@ -1,0 +1,389 @@
+"""The loop of `wavekin.tracker`, compiled for scalar polygonal laws; it writes the same history to the last bit.
+
+The arithmetic is not written twice: `wavekin.envelope` and `wavekin.motion` are compiled from their own text.
+The queue is a binary heap on an array whose outdated entries are recognised when they surface. Links between
+neighbours are arrays that run beside the rows of the fronts.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numba import njit
+from numba.extending import register_jitable
+from numpy.typing import NDArray
+
+from wavekin import envelope, motion
+from wavekin.envelope import MIXED, next_vertex, scan, slope, turning
+from wavekin.motion import meeting_time, position, same_place
+from wavekin.polygon import Polygon, mixed
+from wavekin.records import COLLISION, FRONT, NONE
+from wavekin.tracker import Progress
+
+for _function in (
+    motion.same_place, motion.position, motion.meeting_time,
+    envelope.slope, envelope.turning, envelope.scan, envelope.next_vertex,
+):  # fmt: skip
+    register_jitable(_function)
+
+#: Polygons up to this many breakpoints get a table of all first vertices, if their envelopes need scanning.
+TABLE_LIMIT = 4097
+#: Collisions between two returns to Python, where progress is shown and Ctrl-C is heard.
+PAUSE_EVERY = 200_000
+#: Rows by which arrays that have run full grow, as a factor.
+GROWTH = 1.6
+
+DONE, FULL, PAUSE = 0, 1, 2
+NO_FRONT = -1
+NOT_DUE = -1.0
+
+#: Places in the array of counts.
+FRONTS, COLLISIONS, QUEUED, ALIVE, PUSHES, POPS = range(6)
+
+
+# The queue: rows (time, place, left front), the earliest at index 0
+
+
+@njit(cache=True)
+def before(heap, i, j):  # type: ignore[no-untyped-def]
+    """Return whether row i comes before row j: time, then place."""
+    return heap[i, 0] < heap[j, 0] or (heap[i, 0] == heap[j, 0] and heap[i, 1] < heap[j, 1])
+
+
+@njit(cache=True)
+def heap_push(heap, size, t, x, front):  # type: ignore[no-untyped-def]
+    """Add a row to the heap of `size` rows."""
+    i = size
+    while i > 0:
+        parent = (i - 1) >> 1
+        if not (t < heap[parent, 0] or (t == heap[parent, 0] and x < heap[parent, 1])):
+            break
+        heap[i, 0], heap[i, 1], heap[i, 2] = heap[parent, 0], heap[parent, 1], heap[parent, 2]
+        i = parent
+    heap[i, 0], heap[i, 1], heap[i, 2] = t, x, front
+
+
+@njit(cache=True)
+def heap_drop(heap, size):  # type: ignore[no-untyped-def]
+    """Remove the first row of the heap of `size` rows."""
+    last = size - 1
+    t, x, front = heap[last, 0], heap[last, 1], heap[last, 2]
+    i = 0
+    child = 1
+    while child < last:
+        if child + 1 < last and before(heap, child + 1, child):
+            child += 1
+        if not (heap[child, 0] < t or (heap[child, 0] == t and heap[child, 1] < x)):
+            break
+        heap[i, 0], heap[i, 1], heap[i, 2] = heap[child, 0], heap[child, 1], heap[child, 2]
+        i = child
+        child = 2 * i + 1
+    heap[i, 0], heap[i, 1], heap[i, 2] = t, x, front
+
+
+# The parts of a step, named as in the readable loop
+
+
+@njit(cache=True)
+def first_vertices(walk):  # type: ignore[no-untyped-def]
+    """Return the table of `envelope.scan` for all pairs of states: entry [left, right]."""
+    m = len(walk.u)
+    table = np.zeros((m, m), dtype=np.int16)
+    stack, speeds = np.empty(m, dtype=np.int64), np.empty(m)
+    for right in range(m):
+        for step in (-1, 1):
+            top = 0
+            stack[0] = right
+            state = right + step
+            while 0 <= state < m:
+                speed = slope(walk, state, stack[top])
+                while top > 0 and speed >= speeds[top]:
+                    top -= 1
+                    speed = slope(walk, state, stack[top])
+                top += 1
+                stack[top] = state
+                speeds[top] = speed
+                table[state, right] = stack[top - 1]
+                state += step
+    return table
+
+
+@njit(cache=True)
+def wrapped(place, ring_start, ring_length):  # type: ignore[no-untyped-def]
+    """Return a place within the ring and the laps taken off it."""
+    if ring_length == 0.0:
+        return place, 0
+    lap = math.floor((place - ring_start) / ring_length)
+    return place - lap * ring_length, lap
+
+
+@njit(cache=True)
+def at(fronts, i, t):  # type: ignore[no-untyped-def]
+    """Return the place of front i at time t."""
+    return position(fronts[i].birth_t, fronts[i].birth_x, fronts[i].speed, t)
+
+
+@njit(cache=True)
+def solution(walk, table, scratch, fronts, links, count, left, right, t, x, born_at):  # type: ignore[no-untyped-def]
+    """Append the fronts of the local solve between two states, linked with each other; return how many."""
+    prior, following, turn, due = links
+    stack, speeds = scratch
+    if left == right:
+        return 0
+    turns = turning(walk, left, right)
+    state = left
+    born = 0
+    while state != right:
+        if turns == MIXED and table.shape[0] > 1:
+            next_state = int(table[state, right])
+        else:
+            next_state = next_vertex(walk, turns, state, right, stack, speeds)
+        i = count[FRONTS]
+        row = fronts[i]
+        row.birth_t, row.birth_x = t, x
+        row.death_t, row.death_x = math.inf, math.nan
+        row.left, row.right = state, next_state
+        row.speed = slope(walk, state, next_state)
+        row.departure = 0.0
+        row.born_at, row.ended_at = born_at, NONE
+        row.kind, row.opened = 0, 0
+        prior[i], following[i], turn[i], due[i] = NO_FRONT, NO_FRONT, 0, NOT_DUE
+        if born > 0:
+            fronts[i - 1].opened = 1
+            following[i - 1], prior[i] = i, i - 1
+        count[FRONTS] += 1
+        born += 1
+        state = next_state
+    return born
+
+
+@njit(cache=True)
+def join(fronts, links, heap, count, left, right, turns, now, until, ring):  # type: ignore[no-untyped-def]
+    """Make two fronts neighbours and queue their meeting."""
+    prior, following, turn, due = links
+    if left != NO_FRONT:
+        following[left], turn[left], due[left] = right, turns, NOT_DUE
+    if right != NO_FRONT:
+        prior[right] = left
+    if left == NO_FRONT or right == NO_FRONT:
+        return
+    a, b = fronts[left], fronts[right]
+    seen_x = b.birth_x + turns * ring[1]
+    t = meeting_time(a.birth_t, a.birth_x, a.speed, b.birth_t, seen_x, b.speed, now)
+    if t <= until:
+        due[left] = t
+        heap_push(heap, count[QUEUED], t, wrapped(at(fronts, left, t), ring[0], ring[1])[0], float(left))
+        count[QUEUED] += 1
+        count[PUSHES] += 1
+
+
+@njit(cache=True)
+def start(walk, table, scratch, fronts, links, heap, count, edges, states, until, ring):  # type: ignore[no-untyped-def]
+    """Put the fronts of the initial jumps in place; return how many rows they need if there is no room."""
+    on_ring = ring[1] > 0.0
+    room = len(fronts)
+    first_front, last_front = NO_FRONT, NO_FRONT
+    for i in range(len(edges)):
+        left = states[i - 1] if on_ring else states[i]
+        right = states[i] if on_ring else states[i + 1]
+        if count[FRONTS] + len(walk.u) > room or count[QUEUED] + 2 > len(heap):
+            return FULL
+        head = count[FRONTS]
+        born = solution(walk, table, scratch, fronts, links, count, left, right, 0.0, edges[i], NONE)
+        if born == 0:
+            continue
+        if last_front != NO_FRONT:
+            join(fronts, links, heap, count, last_front, head, 0, 0.0, until, ring)
+        else:
+            first_front = head
+        last_front = count[FRONTS] - 1
+    if on_ring and first_front != NO_FRONT:
+        join(fronts, links, heap, count, last_front, first_front, 1, 0.0, until, ring)
+    count[ALIVE] = count[FRONTS]
+    return DONE
+
+
+@njit(cache=True)
+def advance(walk, table, scratch, fronts, links, heap, collisions, count, until, ring, top_speed, pause):  # type: ignore[no-untyped-def]
+    """Resolve collisions in order until the time is up, an array is full, or `pause` of them are done."""
+    prior, following, turn, due = links
+    start_x, length = ring
+    done = 0
+    while count[QUEUED] > 0:
+        now, first = heap[0, 0], int(heap[0, 2])
+        if due[first] != now:
+            heap_drop(heap, count[QUEUED])
+            count[QUEUED] -= 1
+            count[POPS] += 1
+            continue
+        if (
+            count[FRONTS] + len(walk.u) > len(fronts)
+            or count[COLLISIONS] + 1 > len(collisions)
+            or count[QUEUED] + 2 > len(heap)
+        ):
+            return FULL
+        if done == pause:
+            return PAUSE
+        heap_drop(heap, count[QUEUED])
+        count[QUEUED] -= 1
+        count[POPS] += 1
+        done += 1
+
+        # All fronts at this point, with their laps as seen from the left one of the pair
+        last, first_lap, last_lap = following[first], 0, turn[first]
+        near = same_place(at(fronts, first, now), now, top_speed)
+        members = 2
+        while prior[first] != NO_FRONT and prior[first] != last:
+            i = prior[first]
+            lap = first_lap - turn[i]
+            if at(fronts, first, now) + first_lap * length - (at(fronts, i, now) + lap * length) > near:
+                break
+            first, first_lap = i, lap
+            members += 1
+        while following[last] != NO_FRONT and following[last] != first:
+            i = following[last]
+            lap = last_lap + turn[last]
+            if at(fronts, i, now) + lap * length - (at(fronts, last, now) + last_lap * length) > near:
+                break
+            last, last_lap = i, lap
+            members += 1
+
+        # Their place: the mean weighted with the jumps
+        place_first = at(fronts, first, now) + first_lap * length
+        place_last = at(fronts, last, now) + last_lap * length
+        left, right = int(fronts[first].left), int(fronts[last].right)
+        place = 0.5 * (place_first + place_last)
+        jump = walk.u[right] - walk.u[left]
+        if jump != 0.0:
+            moment = 0.0
+            i, lap = first, first_lap
+            while True:
+                step = walk.u[int(fronts[i].right)] - walk.u[int(fronts[i].left)]
+                moment += step * (at(fronts, i, now) + lap * length - place)
+                if i == last:
+                    break
+                lap += turn[i]
+                i = following[i]
+            low, high = min(place_first, place_last), max(place_first, place_last)
+            place = min(max(place + moment / jump, low), high)
+        place, lap = wrapped(place, start_x, length)
+
+        # They end; the solution between the outer states begins
+        row = count[COLLISIONS]
+        outer_left, outer_right = prior[first], following[last]
+        left_lap = first_lap - (turn[outer_left] if outer_left != NO_FRONT else 0)
+        right_lap = last_lap + turn[last]
+        if outer_left == last:  # the whole ring met in one point
+            outer_left = outer_right = NO_FRONT
+        i = first
+        while True:
+            front = fronts[i]
+            front.death_t, front.death_x, front.ended_at = now, place, row
+            due[i] = NOT_DUE
+            if i == last:
+                break
+            i = following[i]
+        head = count[FRONTS]
+        born = solution(walk, table, scratch, fronts, links, count, left, right, now, place, row)
+        entry = collisions[row]
+        entry.t, entry.x, entry.fronts_in, entry.fronts_out = now, place, members, born
+        entry.left, entry.right = left, right
+        count[COLLISIONS] += 1
+        count[ALIVE] += born - members
+        if born > 0:
+            tail = count[FRONTS] - 1
+            fronts[tail].opened = fronts[last].opened
+            join(fronts, links, heap, count, outer_left, head, lap - left_lap, now, until, ring)
+            join(fronts, links, heap, count, tail, outer_right, right_lap - lap, now, until, ring)
+        else:
+            join(fronts, links, heap, count, outer_left, outer_right, right_lap - left_lap, now, until, ring)
+    return DONE
+
+
+class Kernel:
+    """The compiled loop with its arrays; the counterpart of `Tracker`, with the same parameters."""
+
+    def __init__(
+        self,
+        polygon: Polygon,
+        edges: NDArray[np.float64],
+        states: NDArray[np.int64],
+        ring: tuple[float, float] | None = None,
+    ) -> None:
+        self.polygon = polygon
+        self.edges, self.states = np.ascontiguousarray(edges), np.ascontiguousarray(states, dtype=np.int64)
+        self.ring = (ring[0], ring[1] - ring[0]) if ring else (0.0, 0.0)
+        self.top_speed = polygon.top_speed
+        self.walk = polygon.walk
+        table_wanted = len(polygon) <= TABLE_LIMIT and mixed(polygon)
+        self.table = first_vertices(self.walk) if table_wanted else np.zeros((1, 1), dtype=np.int16)
+        self.scratch = (np.empty(len(polygon), dtype=np.int64), np.empty(len(polygon)))
+        self.count = np.zeros(6, dtype=np.int64)
+        self._make_room(len(edges) + 2 * len(polygon) + 64)
+
+    def _make_room(self, rows: int) -> None:
+        self.fronts = np.empty(rows, dtype=FRONT)
+        self.collisions = np.empty(max(rows, 64), dtype=COLLISION)
+        self.links = (
+            np.empty(rows, dtype=np.int32), np.empty(rows, dtype=np.int32),
+            np.empty(rows, dtype=np.int32), np.empty(rows),
+        )  # fmt: skip
+        self.heap = np.empty((rows + 64, 3))
+
+    def _grow(self) -> None:
+        """Enlarge whatever is about to run full."""
+        count = self.count
+        if count[FRONTS] + len(self.polygon) > len(self.fronts):
+            rows = int(GROWTH * len(self.fronts)) + len(self.polygon)
+            self.fronts = _enlarged(self.fronts, rows)
+            self.links = tuple(_enlarged(link, rows) for link in self.links)  # type: ignore[assignment]
+        if count[COLLISIONS] + 1 > len(self.collisions):
+            self.collisions = _enlarged(self.collisions, int(GROWTH * len(self.collisions)) + 1)
+        if count[QUEUED] + 2 > len(self.heap):
+            self.heap = _enlarged(self.heap, int(GROWTH * len(self.heap)) + 2)
+
+    def run(self, until: float, max_fronts: int, progress: Progress | None = None) -> bool:
+        """Resolve every collision up to `until` (inclusive); return False where `max_fronts` stopped it."""
+        ring = self.ring
+        while True:
+            self.count[:] = 0
+            status = start(
+                self.walk, self.table, self.scratch, self.fronts, self.links, self.heap, self.count,
+                self.edges, self.states, until, ring,
+            )  # fmt: skip
+            if status == DONE:
+                break
+            if self.count[FRONTS] > max_fronts:
+                return False
+            self._make_room(int(2 * len(self.fronts)))
+        while True:
+            status = advance(
+                self.walk, self.table, self.scratch, self.fronts, self.links, self.heap, self.collisions,
+                self.count, until, ring, self.top_speed, PAUSE_EVERY,
+            )  # fmt: skip
+            if status == DONE:
+                return True
+            if self.count[FRONTS] > max_fronts:
+                return False
+            if status == FULL:
+                self._grow()
+            elif progress is not None:
+                progress(float(self.heap[0, 0]), int(self.count[ALIVE]), int(self.count[COLLISIONS]))
+
+    def records(self) -> tuple[NDArray[np.void], NDArray[np.void]]:
+        """Return the fronts and collisions as rows; left and right still breakpoint numbers, departure still 0."""
+        return _trimmed(self.fronts, self.count[FRONTS]), _trimmed(self.collisions, self.count[COLLISIONS])
+
+
+def _enlarged(array: NDArray, rows: int) -> NDArray:
+    """Return a longer copy of an array."""
+    larger = np.empty((rows, *array.shape[1:]), dtype=array.dtype)
+    larger[: len(array)] = array
+    return larger
+
+
+def _trimmed(array: NDArray, rows: int) -> NDArray:
+    """Return the first rows of an array that owns its memory and no more."""
+    array.resize((int(rows),), refcheck=False)
+    return array
