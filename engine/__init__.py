@@ -13,7 +13,7 @@ from wavekin.version import __version__
 
 #: Public names and the modules that hold them.
 _HOMES = {
-    "Audit": "audit",
+    "Audit": "auditing",
     "History": "history",
     "InputError": "errors",
     "KINDS": "records",
@@ -21,9 +21,9 @@ _HOMES = {
     "Profile": "profile",
     "Units": "laws",
     "Law": "laws",
-    "audit": "audit",
+    "audit": "auditing",
     "project": "profile",
-    "track": "track",
+    "track": "tracking",
     "table_law": "laws",
     "formula_law": "laws",
     "law_from_spec": "laws",
