@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavekin.motion import EPSILON
+from wavekin.polygon import unique_pairs
 from wavekin.replay import Replay, replay
 
 if TYPE_CHECKING:
@@ -115,10 +116,13 @@ def _admissibility(history: History) -> Check:
     The flux may pass the chord to the wrong side by no more than half the departure booked for the front.
     """
     fronts = history.fronts
-    pairs, first = np.unique(np.stack([fronts["left"], fronts["right"]], 1), axis=0, return_index=True)
-    if not len(pairs):
+    if not len(fronts):
         return Check("admissibility", 0.0, 1.0, "no front")
-    booked = fronts["departure"][first]
+    sides = [np.searchsorted(history.levels, fronts[side]) for side in ("left", "right")]
+    states, which = unique_pairs(sides[0], sides[1], len(history.levels))
+    pairs = np.stack([history.levels[states[0]], history.levels[states[1]]], axis=1)
+    booked = np.full(len(pairs), np.inf)
+    np.minimum.at(booked, which, fronts["departure"])
     worst = 0.0
     for begin in range(0, len(pairs), 4096):
         worst = max(worst, _chord_excess(history, pairs[begin : begin + 4096], booked[begin : begin + 4096]))

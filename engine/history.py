@@ -172,7 +172,7 @@ class History:
         order = np.lexsort((rows, self.fronts["speed"][rows], x))
         rows, x = rows[order], x[order]
         parted = self.fronts["right"][rows[:-1]] != self.fronts["left"][rows[1:]]
-        broken = np.flatnonzero(parted.reshape(len(parted), -1).any(axis=1))
+        broken = np.flatnonzero(parted if parted.ndim == 1 else parted.any(axis=1))
         if not broken.size:
             return rows
         scale = 64.0 * np.finfo(float).eps * max(float(np.abs(x).max()), abs(t) * self._top_speed)

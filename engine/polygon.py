@@ -21,6 +21,8 @@ SAME_STATE = 1e-12
 #: Steps of golden section with which a chord's departure is enclosed: the bracket shrinks to 6e-5 of a cell.
 GOLDEN_STEPS = 20
 GOLDEN = 0.5 * (5.0**0.5 - 1.0)
+#: Pairs of states are told apart through a table while it has at most this many entries, by sorting above.
+PAIR_TABLE = 1 << 22
 
 
 class Polygon:
@@ -130,8 +132,8 @@ class Polygon:
         result[single] = np.where(opens, self.cell_departure[cell], 0.0)
         many = np.flatnonzero(~single & (left != right))
         if many.size:
-            pairs, back = np.unique(np.stack([left[many], right[many]], 1), axis=0, return_inverse=True)
-            result[many] = self._chord_departures(pairs[:, 0], pairs[:, 1])[back.ravel()]
+            pairs, back = unique_pairs(left[many], right[many], len(self))
+            result[many] = self._chord_departures(*pairs)[back]
         return result
 
     def _chord_departures(self, left: NDArray[np.int64], right: NDArray[np.int64]) -> NDArray[np.float64]:
@@ -239,6 +241,22 @@ def _walk(u: NDArray[np.float64], f: NDArray[np.float64]) -> Walk:
     convex = np.concatenate(([0], np.cumsum(turn > 0.0)))
     concave = np.concatenate(([0], np.cumsum(turn < 0.0)))
     return Walk(u, f, run, run_slope, first, last, convex, concave)  # type: ignore[arg-type]
+
+
+def unique_pairs(
+    left: NDArray[np.int64], right: NDArray[np.int64], states: int
+) -> tuple[tuple[NDArray[np.int64], NDArray[np.int64]], NDArray[np.int64]]:
+    """Return the different pairs among pairs of states numbered below `states`, and where each pair is among them."""
+    key = left * states + right
+    if states**2 > PAIR_TABLE:
+        found, back = np.unique(key, return_inverse=True)
+    else:
+        back_of = np.zeros(states**2, dtype=np.int64)
+        back_of[key] = 1
+        found = np.flatnonzero(back_of)
+        back_of[found] = np.arange(len(found))
+        back = back_of[key]
+    return (found // states, found % states), back
 
 
 def mixed(polygon: Polygon) -> bool:
