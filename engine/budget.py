@@ -87,19 +87,32 @@ class Plan:
             used = weight > 0.0
             scale = 4.0 * target / float(np.sum(root * width))
             step[used] = scale * np.sqrt(splits[used] / weight[used])
-            parts = np.ceil(np.clip(width / step, 1.0, MOST_PARTS)).astype(int)
-        self._refuse_too_many(float(np.sum(splits * parts)))
+            wanted = np.maximum(width / step, 1.0)
+            self._refuse_too_many(float(np.sum(splits * wanted)))
+            parts = np.ceil(np.minimum(wanted, MOST_PARTS)).astype(int)
         self.aim *= 0.9
         inner = [np.linspace(a, b, n + 1)[1:] for a, b, n in zip(self.polygon.u, self.polygon.u[1:], parts, strict=False)]
         self.polygon = self._polygon(np.concatenate([self.polygon.u[:1], *inner]))
 
     def _fans(self, history: History, cells: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-        """Return the total life of fan fronts and the number of fan fronts born in each cell."""
-        fronts = history.fronts[history.fronts["kind"] == FAN]
-        low = np.minimum(fronts["left"], fronts["right"])
-        cell = np.searchsorted(self.polygon.u, low)
-        lived = np.minimum(fronts["death_t"], self.until) - fronts["birth_t"]
-        return np.bincount(cell, lived, cells)[:cells], np.bincount(cell, minlength=cells)[:cells].astype(float)
+        """Return the total life of fan fronts and the number of fan fronts born in each cell.
+
+        A chord across several cells that departs does so in the cells next to its ends; it counts there with
+        the life that a fan front would need for the same departure.
+        """
+        departing = history.fronts[history.fronts["departure"] > 0.0]
+        left, right = (np.searchsorted(self.polygon.u, departing[side]) for side in ("left", "right"))
+        lived = np.minimum(departing["death_t"], self.until) - departing["birth_t"]
+        fan = departing["kind"] == FAN
+        cell = np.minimum(left, right)[fan]
+        life = np.bincount(cell, lived[fan], cells)
+        splits = np.bincount(cell, minlength=cells).astype(float)
+        side = np.where(left < right, 1, -1)
+        for end in (np.where(left < right, left, left - 1)[~fan], np.where(left < right, right - 1, right)[~fan]):
+            opens = (self.polygon.bend[end] == side[~fan]) & (self.polygon.cell_departure[end] > 0.0)
+            booked = departing["departure"][~fan][opens] * lived[~fan][opens]
+            life += np.bincount(end[opens], booked / self.polygon.cell_departure[end[opens]], cells)
+        return life, splits
 
     def _data_length(self, cells: int) -> NDArray[np.float64]:
         """Return the length of x that the data spend in each cell and that is moved to its ends; 0 if none is."""

@@ -66,25 +66,19 @@ def turning(walk: Walk, left: int, right: int) -> int:
     return RUNS if closing == 0 else MIXED
 
 
-def next_vertex(
-    walk: Walk, turns: int, left: int, right: int, stack: MutableSequence[int], speeds: MutableSequence[float]
-) -> int:
-    """Return the state right of the first front of the solution between `left` and `right` (different states).
-
-    `turns` is `turning` of the whole path and stays the same along it, so that the slopes of one path increase
-    strictly in floating point too. `stack` and `speeds` are scratch for as many entries as breakpoints.
-    """
-    if turns == SINGLE:
-        return right
-    if turns == RUNS:
-        if left < right:
-            return min(walk.run_last[walk.run[left]], right)
-        return max(walk.run_first[walk.run[left - 1]], right)
-    return scan(walk, left, right, stack, speeds)
+def next_run_end(walk: Walk, left: int, right: int) -> int:
+    """Return the end of the run that leads from `left` towards `right`, or `right` if that comes first."""
+    if left < right:
+        return min(walk.run_last[walk.run[left]], right)
+    return max(walk.run_first[walk.run[left - 1]], right)
 
 
 def scan(walk: Walk, left: int, right: int, stack: MutableSequence[int], speeds: MutableSequence[float]) -> int:
-    """Return the first vertex from `left` on the path to `right` whose slopes increase strictly, O(|left - right|)."""
+    """Fill `stack` with the path from `left` (at the index returned) down to `right` (at 0), O(|left - right|).
+
+    The slopes of the path increase strictly from `left` to `right`, in floating point too. `stack` and
+    `speeds` have room for as many entries as there are breakpoints.
+    """
     step = -1 if left < right else 1
     top = 0
     stack[0] = right
@@ -96,4 +90,4 @@ def scan(walk: Walk, left: int, right: int, stack: MutableSequence[int], speeds:
         top += 1
         stack[top] = state
         speeds[top] = speed
-    return stack[top - 1]
+    return top

@@ -15,7 +15,7 @@ from numba.extending import register_jitable
 from numpy.typing import NDArray
 
 from wavekin import envelope, motion
-from wavekin.envelope import MIXED, next_vertex, scan, slope, turning
+from wavekin.envelope import MIXED, SINGLE, next_run_end, scan, slope, turning
 from wavekin.motion import meeting_time, position, same_place
 from wavekin.polygon import Polygon, mixed
 from wavekin.records import COLLISION, FRONT, NONE
@@ -23,7 +23,7 @@ from wavekin.tracker import Progress
 
 for _function in (
     motion.same_place, motion.position, motion.meeting_time,
-    envelope.slope, envelope.turning, envelope.scan, envelope.next_vertex,
+    envelope.slope, envelope.turning, envelope.next_run_end, envelope.scan,
 ):  # fmt: skip
     register_jitable(_function)
 
@@ -37,6 +37,17 @@ GROWTH = 1.6
 DONE, FULL, PAUSE = 0, 1, 2
 NO_FRONT = -1
 NOT_DUE = -1.0
+
+#: What the loop reads of a front: its way, its states as breakpoint numbers, when it meets its right neighbour
+#: (NOT_DUE: it does not), its neighbours, and the laps of the ring to add to the next one's place. One record of
+#: one cache line beside the row of the history, which is only written: look-ups far apart in memory cost most.
+LIVE = np.dtype(
+    {
+        "names": ["due", "birth_t", "birth_x", "speed", "left", "right", "prior", "next", "turn", "opened"],
+        "formats": ["f8", "f8", "f8", "f8", "i4", "i4", "i4", "i4", "i4", "i4"],
+        "itemsize": 64,
+    }
+)
 
 #: Places in the array of counts.
 FRONTS, COLLISIONS, QUEUED, ALIVE, PUSHES, POPS = range(6)
@@ -119,39 +130,48 @@ def wrapped(place, ring_start, ring_length):  # type: ignore[no-untyped-def]
 
 
 @njit(cache=True)
-def at(fronts, i, t):  # type: ignore[no-untyped-def]
+def at(live, i, t):  # type: ignore[no-untyped-def]
     """Return the place of front i at time t."""
-    return position(fronts[i].birth_t, fronts[i].birth_x, fronts[i].speed, t)
+    return position(live[i].birth_t, live[i].birth_x, live[i].speed, t)
 
 
 @njit(cache=True)
-def solution(walk, table, scratch, fronts, links, count, left, right, t, x, born_at):  # type: ignore[no-untyped-def]
+def solution(walk, table, scratch, fronts, live, count, left, right, t, x, born_at):  # type: ignore[no-untyped-def]
     """Append the fronts of the local solve between two states, linked with each other; return how many."""
-    prior, following, turn, due = links
     stack, speeds = scratch
     if left == right:
         return 0
     turns = turning(walk, left, right)
+    tabled = table.shape[0] > 1
+    top = scan(walk, left, right, stack, speeds) if turns == MIXED and not tabled else 0
     state = left
     born = 0
     while state != right:
-        if turns == MIXED and table.shape[0] > 1:
+        if turns == SINGLE:
+            next_state = right
+        elif turns != MIXED:
+            next_state = next_run_end(walk, state, right)
+        elif tabled:
             next_state = int(table[state, right])
         else:
-            next_state = next_vertex(walk, turns, state, right, stack, speeds)
+            next_state = stack[top - 1 - born]
         i = count[FRONTS]
+        speed = slope(walk, state, next_state)
         row = fronts[i]
         row.birth_t, row.birth_x = t, x
         row.death_t, row.death_x = math.inf, math.nan
         row.left, row.right = state, next_state
-        row.speed = slope(walk, state, next_state)
-        row.departure = 0.0
+        row.speed, row.departure = speed, 0.0
         row.born_at, row.ended_at = born_at, NONE
         row.kind, row.opened = 0, 0
-        prior[i], following[i], turn[i], due[i] = NO_FRONT, NO_FRONT, 0, NOT_DUE
+        front = live[i]
+        front.birth_t, front.birth_x, front.speed = t, x, speed
+        front.left, front.right = state, next_state
+        front.prior, front.next, front.turn = NO_FRONT, NO_FRONT, 0
+        front.due, front.opened = NOT_DUE, 0
         if born > 0:
-            fronts[i - 1].opened = 1
-            following[i - 1], prior[i] = i, i - 1
+            fronts[i - 1].opened, live[i - 1].opened = 1, 1
+            live[i - 1].next, front.prior = i, i - 1
         count[FRONTS] += 1
         born += 1
         state = next_state
@@ -159,27 +179,26 @@ def solution(walk, table, scratch, fronts, links, count, left, right, t, x, born
 
 
 @njit(cache=True)
-def join(fronts, links, heap, count, left, right, turns, now, until, ring):  # type: ignore[no-untyped-def]
+def join(live, heap, count, left, right, turns, now, until, ring):  # type: ignore[no-untyped-def]
     """Make two fronts neighbours and queue their meeting."""
-    prior, following, turn, due = links
     if left != NO_FRONT:
-        following[left], turn[left], due[left] = right, turns, NOT_DUE
+        live[left].next, live[left].turn, live[left].due = right, turns, NOT_DUE
     if right != NO_FRONT:
-        prior[right] = left
+        live[right].prior = left
     if left == NO_FRONT or right == NO_FRONT:
         return
-    a, b = fronts[left], fronts[right]
+    a, b = live[left], live[right]
     seen_x = b.birth_x + turns * ring[1]
     t = meeting_time(a.birth_t, a.birth_x, a.speed, b.birth_t, seen_x, b.speed, now)
     if t <= until:
-        due[left] = t
-        heap_push(heap, count[QUEUED], t, wrapped(at(fronts, left, t), ring[0], ring[1])[0], float(left))
+        a.due = t
+        heap_push(heap, count[QUEUED], t, wrapped(at(live, left, t), ring[0], ring[1])[0], float(left))
         count[QUEUED] += 1
         count[PUSHES] += 1
 
 
 @njit(cache=True)
-def start(walk, table, scratch, fronts, links, heap, count, edges, states, until, ring):  # type: ignore[no-untyped-def]
+def start(walk, table, scratch, fronts, live, heap, count, edges, states, until, ring):  # type: ignore[no-untyped-def]
     """Put the fronts of the initial jumps in place; return how many rows they need if there is no room."""
     on_ring = ring[1] > 0.0
     room = len(fronts)
@@ -190,29 +209,28 @@ def start(walk, table, scratch, fronts, links, heap, count, edges, states, until
         if count[FRONTS] + len(walk.u) > room or count[QUEUED] + 2 > len(heap):
             return FULL
         head = count[FRONTS]
-        born = solution(walk, table, scratch, fronts, links, count, left, right, 0.0, edges[i], NONE)
+        born = solution(walk, table, scratch, fronts, live, count, left, right, 0.0, edges[i], NONE)
         if born == 0:
             continue
         if last_front != NO_FRONT:
-            join(fronts, links, heap, count, last_front, head, 0, 0.0, until, ring)
+            join(live, heap, count, last_front, head, 0, 0.0, until, ring)
         else:
             first_front = head
         last_front = count[FRONTS] - 1
     if on_ring and first_front != NO_FRONT:
-        join(fronts, links, heap, count, last_front, first_front, 1, 0.0, until, ring)
+        join(live, heap, count, last_front, first_front, 1, 0.0, until, ring)
     count[ALIVE] = count[FRONTS]
     return DONE
 
 
 @njit(cache=True)
-def advance(walk, table, scratch, fronts, links, heap, collisions, count, until, ring, top_speed, pause):  # type: ignore[no-untyped-def]
+def advance(walk, table, scratch, fronts, live, heap, collisions, count, until, ring, top_speed, pause):  # type: ignore[no-untyped-def]
     """Resolve collisions in order until the time is up, an array is full, or `pause` of them are done."""
-    prior, following, turn, due = links
     start_x, length = ring
     done = 0
     while count[QUEUED] > 0:
         now, first = heap[0, 0], int(heap[0, 2])
-        if due[first] != now:
+        if live[first].due != now:
             heap_drop(heap, count[QUEUED])
             count[QUEUED] -= 1
             count[POPS] += 1
@@ -231,61 +249,61 @@ def advance(walk, table, scratch, fronts, links, heap, collisions, count, until,
         done += 1
 
         # All fronts at this point, with their laps as seen from the left one of the pair
-        last, first_lap, last_lap = following[first], 0, turn[first]
-        near = same_place(at(fronts, first, now), now, top_speed)
+        last, first_lap, last_lap = live[first].next, 0, live[first].turn
+        near = same_place(at(live, first, now), now, top_speed)
         members = 2
-        while prior[first] != NO_FRONT and prior[first] != last:
-            i = prior[first]
-            lap = first_lap - turn[i]
-            if at(fronts, first, now) + first_lap * length - (at(fronts, i, now) + lap * length) > near:
+        while live[first].prior != NO_FRONT and live[first].prior != last:
+            i = live[first].prior
+            lap = first_lap - live[i].turn
+            if at(live, first, now) + first_lap * length - (at(live, i, now) + lap * length) > near:
                 break
             first, first_lap = i, lap
             members += 1
-        while following[last] != NO_FRONT and following[last] != first:
-            i = following[last]
-            lap = last_lap + turn[last]
-            if at(fronts, i, now) + lap * length - (at(fronts, last, now) + last_lap * length) > near:
+        while live[last].next != NO_FRONT and live[last].next != first:
+            i = live[last].next
+            lap = last_lap + live[last].turn
+            if at(live, i, now) + lap * length - (at(live, last, now) + last_lap * length) > near:
                 break
             last, last_lap = i, lap
             members += 1
 
         # Their place: the mean weighted with the jumps
-        place_first = at(fronts, first, now) + first_lap * length
-        place_last = at(fronts, last, now) + last_lap * length
-        left, right = int(fronts[first].left), int(fronts[last].right)
+        place_first = at(live, first, now) + first_lap * length
+        place_last = at(live, last, now) + last_lap * length
+        left, right = live[first].left, live[last].right
         place = 0.5 * (place_first + place_last)
         jump = walk.u[right] - walk.u[left]
         if jump != 0.0:
             moment = 0.0
             i, lap = first, first_lap
             while True:
-                step = walk.u[int(fronts[i].right)] - walk.u[int(fronts[i].left)]
-                moment += step * (at(fronts, i, now) + lap * length - place)
+                step = walk.u[live[i].right] - walk.u[live[i].left]
+                moment += step * (at(live, i, now) + lap * length - place)
                 if i == last:
                     break
-                lap += turn[i]
-                i = following[i]
+                lap += live[i].turn
+                i = live[i].next
             low, high = min(place_first, place_last), max(place_first, place_last)
             place = min(max(place + moment / jump, low), high)
         place, lap = wrapped(place, start_x, length)
 
         # They end; the solution between the outer states begins
         row = count[COLLISIONS]
-        outer_left, outer_right = prior[first], following[last]
-        left_lap = first_lap - (turn[outer_left] if outer_left != NO_FRONT else 0)
-        right_lap = last_lap + turn[last]
+        outer_left, outer_right = live[first].prior, live[last].next
+        left_lap = first_lap - (live[outer_left].turn if outer_left != NO_FRONT else 0)
+        right_lap = last_lap + live[last].turn
         if outer_left == last:  # the whole ring met in one point
             outer_left = outer_right = NO_FRONT
         i = first
         while True:
             front = fronts[i]
             front.death_t, front.death_x, front.ended_at = now, place, row
-            due[i] = NOT_DUE
+            live[i].due = NOT_DUE
             if i == last:
                 break
-            i = following[i]
+            i = live[i].next
         head = count[FRONTS]
-        born = solution(walk, table, scratch, fronts, links, count, left, right, now, place, row)
+        born = solution(walk, table, scratch, fronts, live, count, left, right, now, place, row)
         entry = collisions[row]
         entry.t, entry.x, entry.fronts_in, entry.fronts_out = now, place, members, born
         entry.left, entry.right = left, right
@@ -293,11 +311,11 @@ def advance(walk, table, scratch, fronts, links, heap, collisions, count, until,
         count[ALIVE] += born - members
         if born > 0:
             tail = count[FRONTS] - 1
-            fronts[tail].opened = fronts[last].opened
-            join(fronts, links, heap, count, outer_left, head, lap - left_lap, now, until, ring)
-            join(fronts, links, heap, count, tail, outer_right, right_lap - lap, now, until, ring)
+            fronts[tail].opened = live[tail].opened = live[last].opened
+            join(live, heap, count, outer_left, head, lap - left_lap, now, until, ring)
+            join(live, heap, count, tail, outer_right, right_lap - lap, now, until, ring)
         else:
-            join(fronts, links, heap, count, outer_left, outer_right, right_lap - left_lap, now, until, ring)
+            join(live, heap, count, outer_left, outer_right, right_lap - left_lap, now, until, ring)
     return DONE
 
 
@@ -325,10 +343,7 @@ class Kernel:
     def _make_room(self, rows: int) -> None:
         self.fronts = np.empty(rows, dtype=FRONT)
         self.collisions = np.empty(max(rows, 64), dtype=COLLISION)
-        self.links = (
-            np.empty(rows, dtype=np.int32), np.empty(rows, dtype=np.int32),
-            np.empty(rows, dtype=np.int32), np.empty(rows),
-        )  # fmt: skip
+        self.live = _lines(rows)
         self.heap = np.empty((rows + 64, 3))
 
     def _grow(self) -> None:
@@ -337,7 +352,9 @@ class Kernel:
         if count[FRONTS] + len(self.polygon) > len(self.fronts):
             rows = int(GROWTH * len(self.fronts)) + len(self.polygon)
             self.fronts = _enlarged(self.fronts, rows)
-            self.links = tuple(_enlarged(link, rows) for link in self.links)  # type: ignore[assignment]
+            longer = _lines(rows)
+            longer[: len(self.live)] = self.live
+            self.live = longer
         if count[COLLISIONS] + 1 > len(self.collisions):
             self.collisions = _enlarged(self.collisions, int(GROWTH * len(self.collisions)) + 1)
         if count[QUEUED] + 2 > len(self.heap):
@@ -349,7 +366,7 @@ class Kernel:
         while True:
             self.count[:] = 0
             status = start(
-                self.walk, self.table, self.scratch, self.fronts, self.links, self.heap, self.count,
+                self.walk, self.table, self.scratch, self.fronts, self.live, self.heap, self.count,
                 self.edges, self.states, until, ring,
             )  # fmt: skip
             if status == DONE:
@@ -359,7 +376,7 @@ class Kernel:
             self._make_room(int(2 * len(self.fronts)))
         while True:
             status = advance(
-                self.walk, self.table, self.scratch, self.fronts, self.links, self.heap, self.collisions,
+                self.walk, self.table, self.scratch, self.fronts, self.live, self.heap, self.collisions,
                 self.count, until, ring, self.top_speed, PAUSE_EVERY,
             )  # fmt: skip
             if status == DONE:
@@ -374,6 +391,14 @@ class Kernel:
     def records(self) -> tuple[NDArray[np.void], NDArray[np.void]]:
         """Return the fronts and collisions as rows; left and right still breakpoint numbers, departure still 0."""
         return _trimmed(self.fronts, self.count[FRONTS]), _trimmed(self.collisions, self.count[COLLISIONS])
+
+
+def _lines(rows: int) -> NDArray[np.void]:
+    """Return an array of `LIVE` records that begin at cache lines."""
+    size = LIVE.itemsize
+    memory = np.empty((rows + 1) * size, dtype=np.uint8)
+    skip = -memory.ctypes.data % size
+    return memory[skip : skip + rows * size].view(LIVE)
 
 
 def _enlarged(array: NDArray, rows: int) -> NDArray:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from wavekin.envelope import MIXED, Walk, next_vertex, turning
+from wavekin.envelope import MIXED, SINGLE, Walk, next_run_end, scan, turning
 
 if TYPE_CHECKING:
     from wavekin.laws.law import Law
@@ -81,16 +81,19 @@ class Polygon:
 
     def waves(self, left: int, right: int) -> list[int]:
         """Return the states right of each front of the local solution between two states, left to right."""
-        path: list[int] = []
         if left == right:
-            return path
-        stack, speeds = [0] * len(self), [0.0] * len(self)
-        turns = turning(self.lists, left, right)
-        state = left
-        while state != right:
-            state = next_vertex(self.lists, turns, state, right, stack, speeds)
-            path.append(state)
-        return path
+            return []
+        walk = self.lists
+        turns = turning(walk, left, right)
+        if turns == SINGLE:
+            return [right]
+        if turns == MIXED:
+            stack, speeds = [0] * len(self), [0.0] * len(self)
+            return stack[: scan(walk, left, right, stack, speeds)][::-1]
+        path = [left]
+        while path[-1] != right:
+            path.append(next_run_end(walk, path[-1], right))
+        return path[1:]
 
     @cached_property
     def cell_departure(self) -> NDArray[np.float64]:

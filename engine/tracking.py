@@ -141,7 +141,9 @@ class _Runner:
         exact = values[:0] if self.ring else values[[0, -1]]
         if len(states) > STATES_PER_LEVEL * levels:
             states = states[[0, -1]]
-        return polygon_of(self.law, np.linspace(values.min(), values.max(), levels), states, exact)
+        share = np.arange(levels) / (levels - 1)
+        grid = values.min() * share[::-1] + values.max() * share  # symmetric about the middle to the last bit
+        return polygon_of(self.law, grid, states, exact)
 
     def run(self, polygon: Polygon) -> History:
         """Track the data, put on the polygon's breakpoints, and return the history without keyframes."""

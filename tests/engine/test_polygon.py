@@ -64,7 +64,7 @@ def test_states_on_one_line_share_one_speed_to_the_last_bit() -> None:
     ids=lambda value: getattr(value, "name", None),
 )
 def test_departure_encloses_the_envelope_integral_from_above_and_closely(law: wk.Law, low: float, high: float) -> None:
-    """D = integral of |envelope' - s|, here from a brute-force envelope of 20,001 samples of the true flux."""
+    """D = integral of |envelope' - s|, here from a brute-force envelope of 2,001 samples of the true flux."""
     polygon = uniform(law, low, high, 12)
     size = len(polygon)
     for left in range(size):
@@ -76,12 +76,12 @@ def test_departure_encloses_the_envelope_integral_from_above_and_closely(law: wk
                 expected = brute_departure(law, polygon.u[state], polygon.u[following])
                 got = polygon.departures(np.array([state]), np.array([following]))[0]
                 assert got >= expected - 1e-12
-                assert got <= 1.002 * expected + 1e-7  # golden section leaves 3e-4; the sampled envelope 1e-7
+                assert got <= 1.002 * expected + 1e-6  # golden section leaves 3e-4; the samples 1e-6 of it
                 state = following
 
 
 def brute_departure(law: wk.Law, left: float, right: float) -> float:
-    u = np.linspace(left, right, 20_001)
+    u = np.linspace(left, right, 2001)
     f = np.asarray(law.flux(u))
     chord = f[0] + (f[-1] - f[0]) * (u - left) / (right - left)
     side = np.sign(right - left)

@@ -54,7 +54,9 @@ def test_too_many_fronts_stop_the_run() -> None:
 @pytest.mark.parametrize("law", [wk.burgers(), wk.corey(viscosity_ratio=0.5)], ids=["burgers", "corey"])
 def test_budget_is_met_by_the_reported_bound(law: wk.Law, error: float) -> None:
     history = wk.track(law, BOX, 2.0, error=error)
-    assert 0.2 * error < history.error_bound(2.0) <= error
+    assert history.error_bound(2.0) <= error
+    if history.run["budget_loops"] > 1:  # the coarse first run may be good enough already
+        assert history.error_bound(2.0) > 0.4 * error
     assert history.run["budget"] == error
     assert wk.audit(history).holds
 
