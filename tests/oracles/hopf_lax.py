@@ -120,27 +120,18 @@ class HopfLax:
         The minimiser never moves left as x moves right, so equal kinds at two places mean the same kind
         between them; places where the kind changes are halved down to neighbouring floats.
         """
-        parts: list[tuple[float, float, int]] = []
-        stack = [(a, b, *self._minimise([a, b], t)[2].tolist(), 0)]
-        while stack:
-            left, right, first, last, depth = stack.pop()
-            if first == last:
-                parts.append((left, right, first))
-                continue
-            middle = 0.5 * (left + right)
-            if depth == HALVINGS or not left < middle < right:
-                parts += [(left, middle, first), (middle, right, last)]
-                continue
-            kind = int(self._minimise(middle, t)[2])
-            stack.append((middle, right, kind, last, depth + 1))
-            stack.append((left, middle, first, kind, depth + 1))
-        merged: list[Region] = []
-        for left, right, kind in parts:
-            if merged and merged[-1].kind == kind:
-                merged[-1] = merged[-1]._replace(end=right)
-            else:
-                merged.append(Region(left, right, kind))
-        return merged
+        cuts = np.array([a, b])
+        kinds = self._minimise(cuts, t)[2]
+        for _ in range(HALVINGS):
+            middle = 0.5 * (cuts[:-1] + cuts[1:])
+            split = np.flatnonzero((kinds[:-1] != kinds[1:]) & (cuts[:-1] < middle) & (middle < cuts[1:]))
+            if not split.size:
+                break
+            cuts = np.insert(cuts, split + 1, middle[split])
+            kinds = np.insert(kinds, split + 1, self._minimise(middle[split], t)[2])
+        starts = np.flatnonzero(np.concatenate(([True], kinds[1:] != kinds[:-1])))
+        ends = np.concatenate((starts[1:], [len(cuts) - 1]))
+        return [Region(cuts[i], cuts[j], int(kinds[i])) for i, j in zip(starts, ends, strict=True)]
 
     def distance(self, positions: ArrayLike, states: ArrayLike, t: float, on: tuple[float, float]) -> float:
         """Return the L1 distance over an interval between u(., t) and a piecewise-constant function.
