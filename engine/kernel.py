@@ -8,6 +8,7 @@ neighbours are arrays that run beside the rows of the fronts.
 from __future__ import annotations
 
 import math
+from typing import NamedTuple
 
 import numpy as np
 from numba import njit
@@ -50,7 +51,7 @@ LIVE = np.dtype(
 )
 
 #: Places in the array of counts.
-FRONTS, COLLISIONS, QUEUED, ALIVE, PUSHES, POPS = range(6)
+FRONTS, COLLISIONS, ALIVE = range(3)
 
 
 # The queue: rows (time, place, left front), the earliest at index 0
@@ -179,7 +180,31 @@ def solution(walk, table, scratch, fronts, live, count, left, right, t, x, born_
 
 
 @njit(cache=True)
-def join(live, heap, count, left, right, turns, now, until, ring):  # type: ignore[no-untyped-def]
+def enqueue(inside, left_side, right_side, sizes, region, t, x, front):  # type: ignore[no-untyped-def]
+    """Put a meeting on the queue of its place: inside the region's trapezoid, left or right of it.
+
+    A meeting after the region's end goes on no queue; it stays noted in the live front.
+    """
+    if t > region.until:
+        return
+    since = t - region.since
+    offset = x - region.drift * since - region.centre
+    if region.length > 0.0:
+        offset -= np.round(offset / region.length) * region.length
+    reach = region.spread * since
+    if offset < reach - region.left_half:
+        heap_push(left_side, sizes[1], t, x, float(front))
+        sizes[1] += 1
+    elif offset > region.right_half - reach:
+        heap_push(right_side, sizes[2], t, x, float(front))
+        sizes[2] += 1
+    else:
+        heap_push(inside, sizes[0], t, x, float(front))
+        sizes[0] += 1
+
+
+@njit(cache=True)
+def join(live, inside, left_side, right_side, sizes, region, left, right, turns, now, ring):  # type: ignore[no-untyped-def]
     """Make two fronts neighbours and queue their meeting."""
     if left != NO_FRONT:
         live[left].next, live[left].turn, live[left].due = right, turns, NOT_DUE
@@ -190,62 +215,60 @@ def join(live, heap, count, left, right, turns, now, until, ring):  # type: igno
     a, b = live[left], live[right]
     seen_x = b.birth_x + turns * ring[1]
     t = meeting_time(a.birth_t, a.birth_x, a.speed, b.birth_t, seen_x, b.speed, now)
-    if t <= until:
+    if t < math.inf:
         a.due = t
-        heap_push(heap, count[QUEUED], t, wrapped(at(live, left, t), ring[0], ring[1])[0], float(left))
-        count[QUEUED] += 1
-        count[PUSHES] += 1
+        enqueue(inside, left_side, right_side, sizes, region, t, wrapped(at(live, left, t), ring[0], ring[1])[0], left)
 
 
 @njit(cache=True)
-def start(walk, table, scratch, fronts, live, heap, count, edges, states, until, ring):  # type: ignore[no-untyped-def]
-    """Put the fronts of the initial jumps in place; return how many rows they need if there is no room."""
+def full(inside, left_side, right_side, sizes):  # type: ignore[no-untyped-def]
+    """Return whether a queue has no room for what one collision may add."""
+    return sizes[0] + 2 > len(inside) or sizes[1] + 2 > len(left_side) or sizes[2] + 2 > len(right_side)
+
+
+@njit(cache=True)
+def start(walk, table, scratch, fronts, live, inside, left_side, right_side, sizes, region, count, edges, states, ring):  # type: ignore[no-untyped-def]
+    """Put the fronts of the initial jumps in place; return FULL if there is no room for them."""
     on_ring = ring[1] > 0.0
     room = len(fronts)
     first_front, last_front = NO_FRONT, NO_FRONT
     for i in range(len(edges)):
         left = states[i - 1] if on_ring else states[i]
         right = states[i] if on_ring else states[i + 1]
-        if count[FRONTS] + len(walk.u) > room or count[QUEUED] + 2 > len(heap):
+        if count[FRONTS] + len(walk.u) > room or full(inside, left_side, right_side, sizes):
             return FULL
         head = count[FRONTS]
         born = solution(walk, table, scratch, fronts, live, count, left, right, 0.0, edges[i], NONE)
         if born == 0:
             continue
         if last_front != NO_FRONT:
-            join(live, heap, count, last_front, head, 0, 0.0, until, ring)
+            join(live, inside, left_side, right_side, sizes, region, last_front, head, 0, 0.0, ring)
         else:
             first_front = head
         last_front = count[FRONTS] - 1
     if on_ring and first_front != NO_FRONT:
-        join(live, heap, count, last_front, first_front, 1, 0.0, until, ring)
+        join(live, inside, left_side, right_side, sizes, region, last_front, first_front, 1, 0.0, ring)
     count[ALIVE] = count[FRONTS]
     return DONE
 
 
 @njit(cache=True)
-def advance(walk, table, scratch, fronts, live, heap, collisions, count, until, ring, top_speed, pause):  # type: ignore[no-untyped-def]
-    """Resolve collisions in order until the time is up, an array is full, or `pause` of them are done."""
+def advance(walk, table, scratch, fronts, live, inside, left_side, right_side, sizes, region, collisions, count, ring, top_speed, pause):  # type: ignore[no-untyped-def]
+    """Resolve the region's collisions in order until none is left, an array is full, or `pause` of them are done."""
     start_x, length = ring
     done = 0
-    while count[QUEUED] > 0:
-        now, first = heap[0, 0], int(heap[0, 2])
+    while sizes[0] > 0:
+        now, first = inside[0, 0], int(inside[0, 2])
         if live[first].due != now:
-            heap_drop(heap, count[QUEUED])
-            count[QUEUED] -= 1
-            count[POPS] += 1
+            heap_drop(inside, sizes[0])
+            sizes[0] -= 1
             continue
-        if (
-            count[FRONTS] + len(walk.u) > len(fronts)
-            or count[COLLISIONS] + 1 > len(collisions)
-            or count[QUEUED] + 2 > len(heap)
-        ):
+        if count[FRONTS] + len(walk.u) > len(fronts) or count[COLLISIONS] + 1 > len(collisions) or full(inside, left_side, right_side, sizes):
             return FULL
         if done == pause:
             return PAUSE
-        heap_drop(heap, count[QUEUED])
-        count[QUEUED] -= 1
-        count[POPS] += 1
+        heap_drop(inside, sizes[0])
+        sizes[0] -= 1
         done += 1
 
         # All fronts at this point, with their laps as seen from the left one of the pair
@@ -312,11 +335,52 @@ def advance(walk, table, scratch, fronts, live, heap, collisions, count, until, 
         if born > 0:
             tail = count[FRONTS] - 1
             fronts[tail].opened = live[tail].opened = live[last].opened
-            join(live, heap, count, outer_left, head, lap - left_lap, now, until, ring)
-            join(live, heap, count, tail, outer_right, right_lap - lap, now, until, ring)
+            join(live, inside, left_side, right_side, sizes, region, outer_left, head, lap - left_lap, now, ring)
+            join(live, inside, left_side, right_side, sizes, region, tail, outer_right, right_lap - lap, now, ring)
         else:
-            join(live, heap, count, outer_left, outer_right, right_lap - left_lap, now, until, ring)
+            join(live, inside, left_side, right_side, sizes, region, outer_left, outer_right, right_lap - left_lap, now, ring)
     return DONE
+
+
+class Queues:
+    """Three heaps of rows (time, place, left front): inside a region, left and right of it; and their sizes."""
+
+    def __init__(self, *rows: int) -> None:
+        self.heaps = [np.empty((room, 3)) for room in rows]
+        self.sizes = np.zeros(3, dtype=np.int64)
+
+    def make_room(self, more: int) -> None:
+        """Enlarge the heaps that have not the room for some more rows."""
+        for i, heap in enumerate(self.heaps):
+            if self.sizes[i] + more > len(heap):
+                self.heaps[i] = _enlarged(heap, int(GROWTH * (self.sizes[i] + more)))
+
+    def turn(self) -> None:
+        """Let the right heap be the left one from here on, and the emptied left one the right."""
+        self.heaps[1], self.heaps[2] = self.heaps[2], self.heaps[1]
+        self.sizes[1], self.sizes[2] = self.sizes[2], self.sizes[1]
+
+
+class Region(NamedTuple):
+    """A trapezoid in space and time: what happens in it depends on nothing outside (`wavekin.tiles`).
+
+    At time t it reaches from ``centre - left_half + spread (t - since)`` to ``centre + right_half - spread
+    (t - since)`` in the frame that moves with `drift`, until `until`.
+    """
+
+    centre: float
+    left_half: float
+    right_half: float
+    drift: float
+    spread: float
+    since: float
+    until: float
+    length: float
+
+    @staticmethod
+    def everywhere(until: float) -> Region:
+        """Return the whole line or ring up to a time."""
+        return Region(0.0, math.inf, math.inf, 0.0, 0.0, 0.0, until, 0.0)
 
 
 class Kernel:
@@ -331,23 +395,23 @@ class Kernel:
     ) -> None:
         self.polygon = polygon
         self.edges, self.states = np.ascontiguousarray(edges), np.ascontiguousarray(states, dtype=np.int64)
-        self.ring = (ring[0], ring[1] - ring[0]) if ring else (0.0, 0.0)
+        self.ring = (float(ring[0]), float(ring[1] - ring[0])) if ring else (0.0, 0.0)
         self.top_speed = polygon.top_speed
         self.walk = polygon.walk
         table_wanted = len(polygon) <= TABLE_LIMIT and mixed(polygon)
         self.table = first_vertices(self.walk) if table_wanted else np.zeros((1, 1), dtype=np.int16)
         self.scratch = (np.empty(len(polygon), dtype=np.int64), np.empty(len(polygon)))
-        self.count = np.zeros(6, dtype=np.int64)
-        self._make_room(len(edges) + 2 * len(polygon) + 64)
+        self.count = np.zeros(3, dtype=np.int64)
+        self.make_room(2 * len(edges) + 2 * len(polygon) + 64)
 
-    def _make_room(self, rows: int) -> None:
+    def make_room(self, rows: int) -> None:
+        """Start afresh with room for some fronts."""
         self.fronts = np.empty(rows, dtype=FRONT)
-        self.collisions = np.empty(max(rows, 64), dtype=COLLISION)
+        self.collisions = np.empty(rows, dtype=COLLISION)
         self.live = _lines(rows)
-        self.heap = np.empty((rows + 64, 3))
 
-    def _grow(self) -> None:
-        """Enlarge whatever is about to run full."""
+    def grow(self) -> None:
+        """Enlarge what is about to run full."""
         count = self.count
         if count[FRONTS] + len(self.polygon) > len(self.fronts):
             rows = int(GROWTH * len(self.fronts)) + len(self.polygon)
@@ -357,36 +421,42 @@ class Kernel:
             self.live = longer
         if count[COLLISIONS] + 1 > len(self.collisions):
             self.collisions = _enlarged(self.collisions, int(GROWTH * len(self.collisions)) + 1)
-        if count[QUEUED] + 2 > len(self.heap):
-            self.heap = _enlarged(self.heap, int(GROWTH * len(self.heap)) + 2)
 
     def run(self, until: float, max_fronts: int, progress: Progress | None = None) -> bool:
         """Resolve every collision up to `until` (inclusive); return False where `max_fronts` stopped it."""
-        ring = self.ring
+        from wavekin.tiles import TILE, run_tiled
+
+        idle = Region.everywhere(-1.0)  # the first fronts note when they meet; queues are filled afterwards
+        none = Queues(2, 2, 2)
         while True:
             self.count[:] = 0
             status = start(
-                self.walk, self.table, self.scratch, self.fronts, self.live, self.heap, self.count,
-                self.edges, self.states, until, ring,
+                self.walk, self.table, self.scratch, self.fronts, self.live, *none.heaps, none.sizes, idle,
+                self.count, self.edges, self.states, self.ring,
             )  # fmt: skip
+            if self.count[FRONTS] > max_fronts:
+                return False
             if status == DONE:
                 break
-            if self.count[FRONTS] > max_fronts:
-                return False
-            self._make_room(int(2 * len(self.fronts)))
+            self.make_room(2 * len(self.fronts))
+        return run_tiled(self, until, max_fronts, progress, TILE)
+
+    def resolve(self, queues: Queues, region: Region, max_fronts: int, progress: Progress | None) -> bool:
+        """Resolve all collisions queued in a region; return False where `max_fronts` stopped it."""
         while True:
             status = advance(
-                self.walk, self.table, self.scratch, self.fronts, self.live, self.heap, self.collisions,
-                self.count, until, ring, self.top_speed, PAUSE_EVERY,
+                self.walk, self.table, self.scratch, self.fronts, self.live, *queues.heaps, queues.sizes, region,
+                self.collisions, self.count, self.ring, self.top_speed, PAUSE_EVERY,
             )  # fmt: skip
-            if status == DONE:
-                return True
             if self.count[FRONTS] > max_fronts:
                 return False
+            if status == DONE:
+                return True
             if status == FULL:
-                self._grow()
+                self.grow()
+                queues.make_room(2)
             elif progress is not None:
-                progress(float(self.heap[0, 0]), int(self.count[ALIVE]), int(self.count[COLLISIONS]))
+                progress(float(queues.heaps[0][0, 0]), int(self.count[ALIVE]), int(self.count[COLLISIONS]))
 
     def records(self) -> tuple[NDArray[np.void], NDArray[np.void]]:
         """Return the fronts and collisions as rows; left and right still breakpoint numbers, departure still 0."""

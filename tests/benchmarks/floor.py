@@ -7,6 +7,7 @@ repeats just these on the kernel's heap.
 from __future__ import annotations
 
 import importlib.util
+import subprocess
 import sys
 import tempfile
 import time
@@ -41,8 +42,11 @@ def repeat(log: NDArray[np.float64], heap: NDArray[np.float64]) -> int:
 kernel_push, kernel_drop = kernel.heap_push, kernel.heap_drop
 
 
-def logging_kernel() -> ModuleType:
-    """Return a copy of the kernel module that logs its heap in the last rows of the heap's array."""
+def logged(problem: tuple, until: float) -> NDArray[np.float64]:
+    """Return all pushes and pops of one queue over the whole run, from a logging copy of the kernel's text.
+
+    The copy logs in the last rows of the queue's own array, which is made long enough.
+    """
     text = Path(kernel.__file__).read_text().replace("cache=True", "")
     note = "    n = int(heap[-1, 0])\n    heap[-2 - n, 0], heap[-2 - n, 1], heap[-2 - n, 2] = {row}\n    heap[-1, 0] = n + 1\n"
     push, drop = '"""Add a row to the heap of `size` rows."""\n', '"""Remove the first row of the heap of `size` rows."""\n'
@@ -57,9 +61,18 @@ def logging_kernel() -> ModuleType:
         module = importlib.util.module_from_spec(spec)
         sys.modules["logging_kernel"] = module
         spec.loader.exec_module(module)
-        problem = _problem("burgers", 10, 5)
-        module.Kernel(*problem).run(1.0, 10**9)  # compiles while the text is there
-    return module
+        loop = module.Kernel(*problem)
+        everywhere = module.Region.everywhere(until)
+        rows = 64 * len(problem[1])
+        loop.make_room(rows)
+        queues = module.Queues(6 * rows, 2, 2)
+        queues.heaps[0][-1, 0] = 0.0
+        state = (loop.walk, loop.table, loop.scratch, loop.fronts, loop.live, *queues.heaps, queues.sizes, everywhere)
+        assert module.start(*state, loop.count, loop.edges, loop.states, loop.ring) == module.DONE
+        loop.resolve(queues, everywhere, 10**9, None)
+    queue = queues.heaps[0]
+    noted = int(queue[-1, 0])
+    return np.ascontiguousarray(queue[-2 : -2 - noted : -1])
 
 
 def _problem(name: str, jumps: int, levels: int) -> tuple[Polygon, NDArray[np.float64], NDArray[np.int64]]:
@@ -72,42 +85,37 @@ def _problem(name: str, jumps: int, levels: int) -> tuple[Polygon, NDArray[np.fl
 
 
 def measure(name: str, jumps: int = 100_000, levels: int = 65, until: float = 200.0, repeats: int = 5) -> dict[str, float]:
-    """Return kernel and floor times (s, least of the repeats), their ratio and the counts of one problem."""
+    """Return kernel and floor times (s, least of the repeats, on memory used before), their ratio and the counts of one problem."""
     problem = _problem(name, jumps, levels)
-    logger = logging_kernel().Kernel(*problem)
-    logger.heap = np.zeros((len(logger.heap) + 64 * jumps, 3))
-    logger._make_room = lambda rows: _grow_rows(logger, rows)
-    logger._make_room(64 * jumps)
-    logger.run(until, 10**9)
-    noted = int(logger.heap[-1, 0])
-    log = np.ascontiguousarray(logger.heap[-2 : -2 - noted : -1])
+    with tempfile.TemporaryDirectory() as folder:
+        path = Path(folder) / "log.npy"
+        command = f"import floor, numpy; numpy.save({str(path)!r}, floor.logged(floor._problem({name!r}, {jumps}, {levels}), {until}))"
+        # in a process of its own, so that its memory does not lie in the way of what is measured
+        subprocess.run([sys.executable, "-c", command], check=True, cwd=Path(__file__).parent)
+        log = np.load(path)
     deepest = int(np.max(np.cumsum(np.where(log[:, 2] == POP, -1, 1))))
+    loop = kernel.Kernel(*problem)
+    loop.make_room(30 * jumps)
+    room = loop.fronts, loop.collisions, loop.live
+    heap = np.zeros((deepest + 1, 3))
     kernel_times, floor_times = [], []
-    for _ in range(repeats):
-        loop = kernel.Kernel(*problem)
-        loop._make_room(int(logger.count[kernel.FRONTS] * 1.1) + 1000)
+    for _ in range(repeats + 1):  # the first round only makes the system hand over the memory
+        loop.fronts, loop.collisions, loop.live = room
         begin = time.perf_counter()
         loop.run(until, 10**9)
         kernel_times.append(time.perf_counter() - begin)
-        heap = np.zeros((deepest + 1, 3))
         begin = time.perf_counter()
         repeat(log, heap)
         floor_times.append(time.perf_counter() - begin)
     collisions = int(loop.count[kernel.COLLISIONS])
     return {
         "collisions": collisions,
-        "operations": noted,
+        "operations": len(log),
         "kernel": min(kernel_times),
         "floor": min(floor_times),
         "ratio": min(kernel_times) / min(floor_times),
         "collisions per second": collisions / min(kernel_times),
     }
-
-
-def _grow_rows(loop: object, rows: int) -> None:
-    """Make room for rows and a log behind the heap."""
-    kernel.Kernel._make_room(loop, rows)  # type: ignore[arg-type]
-    loop.heap = np.zeros((12 * rows, 3))  # type: ignore[attr-defined]
 
 
 def main() -> None:
