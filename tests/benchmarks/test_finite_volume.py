@@ -35,8 +35,9 @@ def displacement_averages(edges: np.ndarray, t: float, m: float) -> np.ndarray:
     return t * np.diff([amount(x / t) for x in edges]) / np.diff(edges)
 
 
-# Own figures from an earlier code for the same problems (no published table was to be had). Its Courant number
-# is not on record; 0.45 fits best, and errors move by about 3 % for each 0.05 of it: hence the 2 % below.
+# Own figures from an earlier code for the same problems (no published table was to be had). Its Courant
+# number is not on record; 0.45 fits best, and errors move by about 3 % for each 0.05 of it: hence the 2 %
+# below.
 BOX = {
     "godunov": (1.40e-1, 8.53e-2, 5.05e-2, 2.93e-2, 1.67e-2, 9.37e-3),
     "limited": (4.48e-2, 2.18e-2, 1.06e-2, 5.26e-3, 2.66e-3, 1.30e-3),
