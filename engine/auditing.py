@@ -7,7 +7,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.motion import EPSILON
 from wavekin.polygon import unique_pairs
 from wavekin.replay import Replay, replay
@@ -105,7 +104,11 @@ def _jump_speed(history: History) -> Check:
     left, right = (np.searchsorted(history.levels, fronts[side]) for side in ("left", "right"))
     jump, flux = fronts["right"] - fronts["left"], history.level_fluxes
     miss = np.abs(fronts["speed"] * jump - (flux[right] - flux[left]))
-    size = np.abs(flux[left]) + np.abs(flux[right]) + np.abs(fronts["speed"]) * (np.abs(fronts["left"]) + np.abs(fronts["right"]))
+    size = (
+        np.abs(flux[left])
+        + np.abs(flux[right])
+        + np.abs(fronts["speed"]) * (np.abs(fronts["left"]) + np.abs(fronts["right"]))
+    )
     worst = float((miss / np.maximum(EPSILON * size, np.finfo(float).tiny)).max(initial=0.0))
     return Check("jump speed", worst, SPEED_ULPS, "roundings by which speed x jump of state misses the jump of flux")
 

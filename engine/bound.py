@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.polygon import Polygon
 from wavekin.records import CONTACT, FAN, SHOCK
 

@@ -13,7 +13,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.errors import InputError
 from wavekin.polygon import Polygon, polygon_of
 from wavekin.profile import Profile
@@ -91,7 +90,9 @@ class Plan:
             self._refuse_too_many(float(np.sum(splits * wanted)))
             parts = np.ceil(np.minimum(wanted, MOST_PARTS)).astype(int)
         self.aim *= 0.9
-        inner = [np.linspace(a, b, n + 1)[1:] for a, b, n in zip(self.polygon.u, self.polygon.u[1:], parts, strict=False)]
+        inner = [
+            np.linspace(a, b, n + 1)[1:] for a, b, n in zip(self.polygon.u, self.polygon.u[1:], parts, strict=False)
+        ]
         self.polygon = self._polygon(np.concatenate([self.polygon.u[:1], *inner]))
 
     def _fans(self, history: History, cells: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
@@ -105,7 +106,7 @@ class Plan:
         lived = np.minimum(departing["death_t"], self.until) - departing["birth_t"]
         fan = departing["kind"] == FAN
         cell = np.minimum(left, right)[fan]
-        life = np.bincount(cell, lived[fan], cells)
+        life: NDArray[np.float64] = np.bincount(cell, lived[fan], cells).astype(float)
         splits = np.bincount(cell, minlength=cells).astype(float)
         side = np.where(left < right, 1, -1)
         for end in (np.where(left < right, left, left - 1)[~fan], np.where(left < right, right - 1, right)[~fan]):
@@ -125,7 +126,7 @@ class Plan:
             widths, values = np.diff(edges, append=edges[-1]), values
             widths[-1] = widths[:-1].mean() if len(widths) > 1 else 0.0
         cell = (np.searchsorted(self.polygon.u, values, side="right") - 1).clip(0, cells - 1)
-        return np.bincount(cell, widths, cells)
+        return np.bincount(cell, widths, cells).astype(float)
 
     def _refuse_too_many(self, fronts: float) -> None:
         if fronts > self.max_fronts:

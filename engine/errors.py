@@ -34,9 +34,7 @@ class InputError(ValueError):
 
     def located(self, file: str = "", key: str = "") -> InputError:
         """Return the same complaint with the file and the key's place in it filled in."""
-        return InputError(
-            self.rule, key=key or self.key, value=self.value, mend=self.mend, file=file or self.file
-        )
+        return InputError(self.rule, key=key or self.key, value=self.value, mend=self.mend, file=file or self.file)
 
     def __str__(self) -> str:
         place = ": ".join(part for part in (self.file, self.key) if part)

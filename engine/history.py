@@ -7,7 +7,6 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-
 from wavekin.errors import InputError
 from wavekin.profile import Profile
 from wavekin.records import FAN
@@ -17,6 +16,7 @@ if TYPE_CHECKING:
 
 #: Most entries that the keyframes of a history hold for each of its fronts.
 KEYFRAME_SHARE = 4
+
 
 class History:
     """Everything that happened between time 0 and `until`.
@@ -159,7 +159,9 @@ class History:
     def _time(self, t: float) -> float:
         t = float(t)
         if not 0.0 <= t <= self.until:
-            raise InputError(f"must lie between 0 and {self.until!r}", key="t", value=t, mend="choose a time of the run")
+            raise InputError(
+                f"must lie between 0 and {self.until!r}", key="t", value=t, mend="choose a time of the run"
+            )
         return t
 
     def _by_place(self, rows: NDArray[np.int64], t: float) -> NDArray[np.int64]:
@@ -185,8 +187,8 @@ class History:
     def _top_speed(self) -> float:
         return float(np.abs(self.fronts["speed"]).max(initial=0.0))
 
-    def _order(self, a: int, b: int) -> float:
-        """Return below 0 where front a stands left of front b throughout their common life."""
+    def _order(self, a: int, b: int) -> int:
+        """Return -1 where front a stands left of front b throughout their common life."""
         first, second = self.fronts[a], self.fronts[b]
         begin = max(first["birth_t"], second["birth_t"])
         middle = 0.5 * (begin + min(first["death_t"], second["death_t"], self.until))
@@ -196,7 +198,7 @@ class History:
         if self.ring is not None:
             length = self.ring[1] - self.ring[0]
             between -= np.round(between / length) * length
-        return float(between) or float(first["speed"] - second["speed"])
+        return int(np.sign(between) or np.sign(first["speed"] - second["speed"]))
 
     def _apart(self, x: NDArray[np.float64]) -> NDArray[np.float64]:
         """Return places that increase strictly: fronts just born at one point are moved apart by single ulp."""
@@ -316,7 +318,8 @@ def keyframes(history: History, times: NDArray[np.float64]) -> None:
     while len(times) > 1 and alive.sum() > KEYFRAME_SHARE * len(fronts):
         times, alive = times[::2], alive[::2]
     lists = []
-    rows, first = np.zeros(0, dtype=np.int32), 0
+    rows: NDArray[Any] = np.zeros(0, dtype=np.int32)
+    first = 0
     for t in times:
         stop = int(np.searchsorted(fronts["birth_t"], t, side="right"))
         rows = np.concatenate([rows, np.arange(first, stop, dtype=np.int32)])

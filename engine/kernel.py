@@ -14,7 +14,6 @@ import numpy as np
 from numba import njit
 from numba.extending import register_jitable
 from numpy.typing import NDArray
-
 from wavekin import envelope, motion
 from wavekin.envelope import MIXED, SINGLE, next_run_end, scan, slope, turning
 from wavekin.motion import meeting_time, position, same_place
@@ -127,7 +126,10 @@ def wrapped(place, ring_start, ring_length):  # type: ignore[no-untyped-def]
     if ring_length == 0.0:
         return place, 0
     lap = math.floor((place - ring_start) / ring_length)
-    return place - lap * ring_length, lap
+    inside = place - lap * ring_length
+    if inside >= ring_start + ring_length:  # a hair left of the seam, rounded onto it
+        return ring_start, lap + 1
+    return max(inside, ring_start), lap
 
 
 @njit(cache=True)
@@ -253,7 +255,23 @@ def start(walk, table, scratch, fronts, live, inside, left_side, right_side, siz
 
 
 @njit(cache=True)
-def advance(walk, table, scratch, fronts, live, inside, left_side, right_side, sizes, region, collisions, count, ring, top_speed, pause):  # type: ignore[no-untyped-def]
+def advance(
+    walk,
+    table,
+    scratch,
+    fronts,
+    live,
+    inside,
+    left_side,
+    right_side,
+    sizes,
+    region,
+    collisions,
+    count,
+    ring,
+    top_speed,
+    pause,
+):  # type: ignore[no-untyped-def]
     """Resolve the region's collisions in order until none is left, an array is full, or `pause` of them are done."""
     start_x, length = ring
     done = 0
@@ -263,7 +281,11 @@ def advance(walk, table, scratch, fronts, live, inside, left_side, right_side, s
             heap_drop(inside, sizes[0])
             sizes[0] -= 1
             continue
-        if count[FRONTS] + len(walk.u) > len(fronts) or count[COLLISIONS] + 1 > len(collisions) or full(inside, left_side, right_side, sizes):
+        if (
+            count[FRONTS] + len(walk.u) > len(fronts)
+            or count[COLLISIONS] + 1 > len(collisions)
+            or full(inside, left_side, right_side, sizes)
+        ):
             return FULL
         if done == pause:
             return PAUSE
@@ -338,7 +360,19 @@ def advance(walk, table, scratch, fronts, live, inside, left_side, right_side, s
             join(live, inside, left_side, right_side, sizes, region, outer_left, head, lap - left_lap, now, ring)
             join(live, inside, left_side, right_side, sizes, region, tail, outer_right, right_lap - lap, now, ring)
         else:
-            join(live, inside, left_side, right_side, sizes, region, outer_left, outer_right, right_lap - left_lap, now, ring)
+            join(
+                live,
+                inside,
+                left_side,
+                right_side,
+                sizes,
+                region,
+                outer_left,
+                outer_right,
+                right_lap - left_lap,
+                now,
+                ring,
+            )
     return DONE
 
 

@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
+import itertools
 from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.envelope import MIXED, SINGLE, Walk, next_run_end, scan, turning
 
 if TYPE_CHECKING:
@@ -171,10 +171,10 @@ class Polygon:
         bounds = [0, *changes.tolist(), len(self.bend)]
         kinks = set(np.flatnonzero(~self.smooth).tolist())
         stretches = []
-        for first, last in zip(bounds[:-1], bounds[1:], strict=True):
+        for first, last in itertools.pairwise(bounds):
             if last > first and self.bend[first]:
                 cuts = [first, *sorted(k for k in kinks if first < k < last), last]
-                stretches += [(a, b, int(self.bend[first])) for a, b in zip(cuts[:-1], cuts[1:], strict=True)]
+                stretches += [(a, b, int(self.bend[first])) for a, b in itertools.pairwise(cuts)]
         return stretches
 
     def _violation(
@@ -268,9 +268,7 @@ def mixed(polygon: Polygon) -> bool:
     return last > 0 and MIXED in (turning(polygon.walk, 0, last), turning(polygon.walk, last, 0))
 
 
-def polygon_of(
-    law: Law, grid: NDArray[np.float64], states: NDArray[np.float64], exact: NDArray[np.float64]
-) -> Polygon:
+def polygon_of(law: Law, grid: NDArray[np.float64], states: NDArray[np.float64], exact: NDArray[np.float64]) -> Polygon:
     """Return the polygon of a law through a grid, the data's states and the law's own special states.
 
     Parameters

@@ -7,7 +7,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-
 from wavekin.errors import InputError
 
 #: Points at which each cell of a projection is sampled; the midpoint rule on them integrates |function - mean|.

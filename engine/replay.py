@@ -33,7 +33,9 @@ def replay(history: History) -> Replay:
     """
     fronts, collisions = history.fronts, history.collisions
     order = np.argsort(fronts["ended_at"], kind="stable")
-    first_ended = order[np.searchsorted(fronts["ended_at"][order], np.arange(len(collisions)))] if len(fronts) else order
+    first_ended = (
+        order[np.searchsorted(fronts["ended_at"][order], np.arange(len(collisions)))] if len(fronts) else order
+    )
     first_born = np.searchsorted(fronts["born_at"], np.arange(len(collisions)))
     length = 0.0 if history.ring is None else history.ring[1] - history.ring[0]
     initial = int(np.searchsorted(fronts["born_at"], 0))

@@ -6,7 +6,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-
 from wavekin.errors import InputError
 from wavekin.records import FAN
 

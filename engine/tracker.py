@@ -5,12 +5,12 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Callable
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.envelope import slope
 from wavekin.motion import meeting_time, position, same_place
 from wavekin.polygon import Polygon
@@ -168,7 +168,10 @@ class Tracker:
         if self.ring_length == 0.0:
             return place, 0
         lap = math.floor((place - self.ring_start) / self.ring_length)
-        return place - lap * self.ring_length, lap
+        inside = place - lap * self.ring_length
+        if inside >= self.ring_start + self.ring_length:  # a hair left of the seam, rounded onto it
+            return self.ring_start, lap + 1
+        return max(inside, self.ring_start), lap
 
     def _solution(self, left: int, right: int, place: float, born_at: int) -> list[Front]:
         """Return the fronts of the local solution between two states, linked with each other."""
@@ -219,7 +222,7 @@ class Tracker:
             if born:
                 groups.append(born)
         self.alive = len(self.fronts)
-        for group, following in zip(groups[:-1], groups[1:], strict=True):
+        for group, following in itertools.pairwise(groups):
             self._join(group[-1], following[0], 0)
         if on_ring and groups:
             self._join(groups[-1][-1], groups[0][0], 1)
@@ -229,7 +232,18 @@ class Tracker:
     def records(self) -> tuple[NDArray[np.void], NDArray[np.void]]:
         """Return the fronts and collisions as rows; left and right still breakpoint numbers, departure still 0."""
         fronts = np.zeros(len(self.fronts), FRONT)
-        for name in ("birth_t", "birth_x", "death_t", "death_x", "left", "right", "speed", "born_at", "ended_at", "opened"):
+        for name in (
+            "birth_t",
+            "birth_x",
+            "death_t",
+            "death_x",
+            "left",
+            "right",
+            "speed",
+            "born_at",
+            "ended_at",
+            "opened",
+        ):
             fronts[name] = [getattr(front, name) for front in self.fronts]
         collisions = np.array(self.collisions, COLLISION) if self.collisions else np.zeros(0, COLLISION)
         return fronts, collisions

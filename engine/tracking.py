@@ -6,17 +6,19 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.bound import complete
 from wavekin.budget import Plan
 from wavekin.errors import InputError
-from wavekin.history import History, keyframes as store_keyframes
+from wavekin.history import History
+from wavekin.history import keyframes as store_keyframes
+from wavekin.ordering import in_order
 from wavekin.polygon import Polygon, polygon_of
 from wavekin.profile import Profile
 from wavekin.tracker import Progress, Tracker
 from wavekin.version import __version__
 
 if TYPE_CHECKING:
+    from wavekin.kernel import Kernel
     from wavekin.laws.law import Law
 
 #: Breakpoints over the data's span where neither `error` nor `levels` is given.
@@ -158,7 +160,7 @@ class _Runner:
                 value=self.until,
                 mend="raise max_fronts or the error budget, lower levels or stop earlier",
             )
-        fronts, collisions = loop.records()
+        fronts, collisions = in_order(*loop.records())
         complete(fronts, collisions, polygon)
         return History(
             fronts=fronts,

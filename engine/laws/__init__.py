@@ -14,11 +14,12 @@ from inspect import signature
 from typing import Any
 
 from wavekin.errors import InputError
-from wavekin.laws import basic, displacement, traffic
+from wavekin.laws import basic, displacement, flood, settling, sorption, traffic
+from wavekin.laws.formula import formula_law
 from wavekin.laws.law import Law, Piece, Units
 from wavekin.laws.table import table_law
 
-__all__ = ["NAMED", "Law", "Piece", "Units", "law_from_spec", "table_law"]
+__all__ = ["NAMED", "Law", "Piece", "Units", "formula_law", "law_from_spec", "table_law"]
 
 
 def _named(factory: Callable[..., Law]) -> Callable[..., Law]:
@@ -39,6 +40,11 @@ NAMED: dict[str, Callable[..., Law]] = {
         basic.cubic,
         basic.transport,
         displacement.corey,
+        flood.chezy,
+        flood.manning,
+        settling.richardson_zaki,
+        settling.vesilind,
+        sorption.langmuir,
         traffic.greenshields,
         traffic.triangular,
     )
@@ -61,6 +67,8 @@ def law_from_spec(spec: dict[str, Any]) -> Law:
     """
     if "table" in spec:
         return table_law(spec["table"]["u"], spec["table"]["f"], spec.get("reading", "polygon"))
+    if "formula" in spec:
+        return formula_law(spec["formula"], spec["range"], spec.get("parameters"))
     name, parameters = spec.get("name"), dict(spec.get("parameters", {}))
     if name not in NAMED:
         raise InputError("must name a known law", key="law.name", value=name, mend=_nearest(str(name), list(NAMED)))
@@ -72,7 +80,9 @@ def law_from_spec(spec: dict[str, Any]) -> Law:
                 mend=_nearest(parameter, known),
             )  # fmt: skip
     missing = [
-        key for key, item in signature(NAMED[name]).parameters.items() if item.default is item.empty and key not in parameters
+        key
+        for key, item in signature(NAMED[name]).parameters.items()
+        if item.default is item.empty and key not in parameters
     ]
     if missing:
         raise InputError(f"needs {missing[0]}", key="law", value=name, mend=f"add {missing[0]} = ...")

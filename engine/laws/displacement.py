@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.laws.law import Law, Units
 from wavekin.laws.parameters import number, positive
 
 #: Places in lengths of the medium, times in pore volumes injected.
 PORE_VOLUMES = Units("-", "-", "L", "PV", "saturation", "s", "distance", "pore volumes injected")
+
+
+Terms = tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.float64]]
 
 
 def corey(
@@ -46,24 +48,39 @@ def corey(
     end = positive("endpoint_ratio", endpoint_ratio)
     mobility = ratio * end
 
-    def flux(s: NDArray[np.float64]) -> NDArray[np.float64]:
+    def parts(s: NDArray[np.float64]) -> tuple[Terms, Terms]:
+        """Return numerator and denominator of f, each with its first two derivatives."""
         s = np.asarray(s, dtype=float)
-        rest = (1.0 - s) ** m
-        a = s**n
-        return a * (1.0 - g * rest) / (a + mobility * rest)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            a = _power(s, n, 1.0)
+            rest = _power(1.0 - s, m, -1.0)
+        numerator = (
+            a[0] * (1.0 - g * rest[0]),
+            a[1] * (1.0 - g * rest[0]) - g * a[0] * rest[1],
+            a[2] * (1.0 - g * rest[0]) - 2.0 * g * a[1] * rest[1] - g * a[0] * rest[2],
+        )
+        denominator = (a[0] + mobility * rest[0], a[1] + mobility * rest[1], a[2] + mobility * rest[2])
+        return numerator, denominator
+
+    def flux(s: NDArray[np.float64]) -> NDArray[np.float64]:
+        (top, *_), (bottom, *_) = parts(s)
+        return top / bottom
 
     def derivative(s: NDArray[np.float64]) -> NDArray[np.float64]:
-        s = np.asarray(s, dtype=float)
-        a, b, rest = s**n, mobility * (1.0 - s) ** m, (1.0 - s) ** m
-        da, db, drest = n * s ** (n - 1.0), -mobility * m * (1.0 - s) ** (m - 1.0), -m * (1.0 - s) ** (m - 1.0)
-        total = a + b
-        plain = (da * b - a * db) / total**2
-        return plain * (1.0 - g * rest) - g * drest * a / total
+        (top, dtop, _), (bottom, dbottom, _) = parts(s)
+        return (dtop * bottom - top * dbottom) / bottom**2
+
+    def second(s: NDArray[np.float64]) -> NDArray[np.float64]:
+        (top, dtop, ddtop), (bottom, dbottom, ddbottom) = parts(s)
+        with np.errstate(invalid="ignore"):
+            bent = ddtop / bottom - (2.0 * dtop * dbottom + top * ddbottom) / bottom**2
+            return bent + 2.0 * top * dbottom**2 / bottom**3
 
     return Law(
         flux,
         (0.0, 1.0),
         derivative=derivative,
+        second_derivative=second,
         name="corey",
         formula="f = s^n (1 - G (1-s)^m) / (s^n + M (1-s)^m)",
         parameters={
@@ -76,6 +93,14 @@ def corey(
         source="A. T. Corey 1954; S. E. Buckley and M. C. Leverett 1942",
         units=PORE_VOLUMES,
     )
+
+
+def _power(base: NDArray[np.float64], exponent: float, slope: float) -> Terms:
+    """Return base^exponent and its first two derivatives with respect to s, where base has the given slope in s."""
+    first = slope * exponent * base ** (exponent - 1.0)
+    if exponent == 1.0:
+        return base, first, np.zeros_like(base)
+    return base**exponent, first, exponent * (exponent - 1.0) * base ** (exponent - 2.0)
 
 
 def _exponent(name: str, value: float) -> float:

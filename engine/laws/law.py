@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-
 from wavekin.errors import InputError
 
 Flux = Callable[[NDArray[np.float64]], Any]
@@ -192,7 +192,7 @@ class Law:
             noise = CURVATURE_ULPS * np.finfo(float).eps * np.abs(f).max(initial=0.0)
             sign = np.where(np.abs(bends) > noise, np.sign(bends), 0.0)
             known = np.flatnonzero(sign)
-            for i, j in zip(known[:-1], known[1:], strict=True):
+            for i, j in itertools.pairwise(known):
                 if sign[i] != sign[j]:
                     if self.second_derivative is not None:
                         second = self.second_derivative
@@ -209,10 +209,10 @@ class Law:
         """Return the pieces between special states with the bend that secants of each show."""
         if self.polygon is not None:
             corners = np.asarray(self.polygon[0])
-            return tuple(Piece(float(a), float(b), 0) for a, b in zip(corners[:-1], corners[1:], strict=True))
+            return tuple(Piece(float(a), float(b), 0) for a, b in itertools.pairwise(corners))
         bounds = [self.range[0], *self.special.tolist(), self.range[1]]
         pieces = []
-        for a, b in zip(bounds[:-1], bounds[1:], strict=True):
+        for a, b in itertools.pairwise(bounds):
             if any(start <= a and b <= end for start, end in self.linear):
                 pieces.append(Piece(a, b, 0))
                 continue

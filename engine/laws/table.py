@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 from numpy.typing import ArrayLike
-
 from wavekin.errors import InputError
 from wavekin.laws.law import Law, Units
 
@@ -73,7 +74,7 @@ def _smooth(states: np.ndarray, fluxes: np.ndarray, common: dict) -> Law:
     curve = PchipInterpolator(states, fluxes)
     second = curve.derivative(2)
     marks = []
-    for a, b in zip(states[:-1], states[1:], strict=True):
+    for a, b in itertools.pairwise(states):
         at_a, at_b = float(second(a)), float(second(np.nextafter(b, a)))
         if at_a * at_b < 0.0:
             marks.append(float(a + (b - a) * at_a / (at_a - at_b)))  # f'' is linear within a cubic

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import numpy as np
-
 from wavekin.laws.law import Law, Units
 from wavekin.laws.parameters import positive
 

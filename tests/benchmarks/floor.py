@@ -12,13 +12,13 @@ import sys
 import tempfile
 import time
 from pathlib import Path
-from types import ModuleType
 
 import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 from wavekin import kernel
 from wavekin.laws import NAMED
+from wavekin.ordering import in_order
 from wavekin.polygon import Polygon, polygon_of
 
 #: A logged pop, in the place of a front's number.
@@ -49,7 +49,10 @@ def logged(problem: tuple, until: float) -> NDArray[np.float64]:
     """
     text = Path(kernel.__file__).read_text().replace("cache=True", "")
     note = "    n = int(heap[-1, 0])\n    heap[-2 - n, 0], heap[-2 - n, 1], heap[-2 - n, 2] = {row}\n    heap[-1, 0] = n + 1\n"
-    push, drop = '"""Add a row to the heap of `size` rows."""\n', '"""Remove the first row of the heap of `size` rows."""\n'
+    push, drop = (
+        '"""Add a row to the heap of `size` rows."""\n',
+        '"""Remove the first row of the heap of `size` rows."""\n',
+    )
     assert push in text and drop in text
     text = text.replace(push, push + note.format(row="t, x, front"))
     text = text.replace(drop, drop + note.format(row=f"0.0, 0.0, {POP}"))
@@ -84,7 +87,9 @@ def _problem(name: str, jumps: int, levels: int) -> tuple[Polygon, NDArray[np.fl
     return polygon, np.sort(rng.random(jumps)) * jumps, rng.integers(0, len(polygon), jumps + 1)
 
 
-def measure(name: str, jumps: int = 100_000, levels: int = 65, until: float = 200.0, repeats: int = 5) -> dict[str, float]:
+def measure(
+    name: str, jumps: int = 100_000, levels: int = 65, until: float = 200.0, repeats: int = 5
+) -> dict[str, float]:
     """Return kernel and floor times (s, least of the repeats, on memory used before), their ratio and the counts of one problem."""
     problem = _problem(name, jumps, levels)
     with tempfile.TemporaryDirectory() as folder:
@@ -103,6 +108,7 @@ def measure(name: str, jumps: int = 100_000, levels: int = 65, until: float = 20
         loop.fronts, loop.collisions, loop.live = room
         begin = time.perf_counter()
         loop.run(until, 10**9)
+        in_order(loop.fronts[: loop.count[kernel.FRONTS]], loop.collisions[: loop.count[kernel.COLLISIONS]])
         kernel_times.append(time.perf_counter() - begin)
         begin = time.perf_counter()
         repeat(log, heap)

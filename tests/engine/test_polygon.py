@@ -100,7 +100,9 @@ def brute_departure(law: wk.Law, left: float, right: float) -> float:
 def test_tangent_shock_departs_less_and_less_and_an_admissible_one_not_at_all() -> None:
     """Welge's tangent for quadratic fractional flow is at sqrt(M / (1 + M)) (closed form, computed)."""
     law = wk.corey(viscosity_ratio=1.0 / 3.0)
-    tangent = brentq(lambda s: float(law.derivative(np.array([s]))[0]) - float(law.flux(np.array([s]))[0]) / s, 0.3, 0.9)
+    tangent = brentq(
+        lambda s: float(law.derivative(np.array([s]))[0]) - float(law.flux(np.array([s]))[0]) / s, 0.3, 0.9
+    )
     assert tangent == pytest.approx(0.5, abs=1e-12)
     polygon = polygon_of(law, np.linspace(0.0, 1.0, 41), np.array([0.0, 0.3, 0.5, 1.0]), np.zeros(0))
     half, below, zero = polygon.index(np.array([0.5, 0.3, 0.0]))

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 import pytest
 import wavekin as wk
@@ -48,7 +50,7 @@ def test_projection_keeps_its_promise(share: float) -> None:
     corners = np.unique(corners[(corners >= 0.0) & (corners <= 1.0)])
     true = sum(
         quad(lambda x: abs(float(wave(np.array(x))) - float(profile(x))), a, b)[0]
-        for a, b in zip(corners[:-1], corners[1:], strict=True)
+        for a, b in itertools.pairwise(corners)
     )
     assert true <= profile.defect <= share
     assert profile.defect <= 1.3 * true
