@@ -26,7 +26,7 @@ DEFAULT_LEVELS = 257
 #: The data's states are made breakpoints while there are at most this many for each breakpoint asked for.
 STATES_PER_LEVEL = 4
 #: Runs that start with more fronts than this are worth the start-up time of the compiled loop.
-COMPILED_FROM = 3000
+COMPILED_FROM = 8000
 #: Budget loops after which the last bound is what can be had.
 MAX_BUDGET_LOOPS = 8
 MAX_FRONTS = 20_000_000

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from numpy.typing import NDArray
 from wavekin.laws.law import Law, Units
@@ -76,11 +78,14 @@ def corey(
             bent = ddtop / bottom - (2.0 * dtop * dbottom + top * ddbottom) / bottom**2
             return bent + 2.0 * top * dbottom**2 / bottom**3
 
+    plain = n == 2.0 and m == 2.0 and g == 0.0
+    turn = 0.5 - math.sin(math.asin(1.0 - 2.0 * mobility / (1.0 + mobility)) / 3.0)  # 3 s^2 - 2 s^3 = M / (1 + M)
     return Law(
         flux,
         (0.0, 1.0),
         derivative=derivative,
         second_derivative=second,
+        inflections=(turn,) if plain else None,
         name="corey",
         formula="f = s^n (1 - G (1-s)^m) / (s^n + M (1-s)^m)",
         parameters={

@@ -1,0 +1,272 @@
+"""Histories in HDF5: plain columns that h5py alone can read, the same bytes for the same case."""
+
+from __future__ import annotations
+
+import contextlib
+import hashlib
+import json
+import os
+import tempfile
+from collections.abc import Iterator
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from wavekin.errors import InputError
+from wavekin.version import __version__
+
+if TYPE_CHECKING:
+    import h5py
+    from wavekin.history import History
+    from wavekin.io.casefile import Case
+
+FORMAT = "wavekin history"
+FORMAT_VERSION = 1
+#: Rows of a column that are compressed together.
+CHUNK = 1 << 16
+SUFFIX = ".part"
+
+SCALARS = ("until", "initial_defect", "initial_cumulative_defect", "flux_gap")
+
+
+@contextlib.contextmanager
+def written_beside(path: str | Path, replace: bool = False) -> Iterator[Path]:
+    """Give a temporary path beside `path`; it takes that name when the block ends well and vanishes when not.
+
+    Raises
+    ------
+    InputError
+        Where the file exists and `replace` is not set, or the folder cannot be written to.
+    """
+    path = Path(path)
+    check_writable(path, replace)
+    handle, name = tempfile.mkstemp(prefix=f".{path.name}.", suffix=SUFFIX, dir=path.parent)
+    os.close(handle)
+    temporary = Path(name)
+    try:
+        yield temporary
+        mask = os.umask(0)
+        os.umask(mask)
+        temporary.chmod(0o666 & ~mask)
+        os.replace(temporary, path)
+    except OSError as error:
+        raise InputError(
+            f"cannot be written ({error.strerror or error})", file=str(path), mend="free space or choose another place"
+        ) from error
+    finally:
+        temporary.unlink(missing_ok=True)
+
+
+def check_writable(path: str | Path, replace: bool = False) -> None:
+    """Raise InputError where a result could not be put at `path`; called before long work starts."""
+    path = Path(path)
+    if path.is_dir():
+        raise InputError("is a folder", file=str(path), mend="give the name of a file in it")
+    if path.exists() and not replace:
+        raise InputError("exists already", file=str(path), mend="choose another name or ask for it with --replace")
+    if not path.parent.is_dir():
+        raise InputError("is in a folder that does not exist", file=str(path), mend="make the folder first")
+    if not os.access(path.parent, os.W_OK | os.X_OK):
+        raise InputError("is in a folder that cannot be written to", file=str(path), mend="choose another folder")
+
+
+def save(history: History, path: str | Path, *, replace: bool = False, case: Case | None = None) -> None:
+    """Write a history to HDF5.
+
+    Parameters
+    ----------
+    history : History
+    path : path
+        Written beside its final name and renamed when whole.
+    replace : bool
+        Whether a file of that name may be replaced.
+    case : Case, optional
+        Embedded word for word with its tables, so that the run can be repeated from the file alone.
+
+    Raises
+    ------
+    InputError
+        Where the file exists or cannot be written.
+    """
+    import h5py
+
+    with (
+        written_beside(path, replace) as temporary,
+        h5py.File(temporary, "w", libver=("v110", "v110"), track_order=False) as file,
+    ):
+        _write(file, history, case)
+
+
+def _write(file: h5py.File, history: History, case: Case | None) -> None:
+    from wavekin.records import COLLISION_COLUMNS, FRONT_COLUMNS
+
+    law = history.law
+    units = law.units if law is not None else None
+    at_end = {"bound": history.error_bound(history.until), "cumulative_bound": history.cumulative_bound(history.until)}
+    file.attrs.update(
+        {
+            "format": FORMAT,
+            "format_version": FORMAT_VERSION,
+            "program_version": __version__,
+            "title": case.title if case else "",
+            "caution": case.caution if case else "",
+            "law": json.dumps(law.spec if law is not None else None, sort_keys=True),
+            "law_name": law.name if law is not None else "",
+            "law_formula": law.formula if law is not None else "",
+            "law_source": law.source if law is not None else "",
+            "units": json.dumps(vars(units) if units else None, sort_keys=True),
+            "ring": np.array(history.ring if history.ring else [], dtype=float),
+            "run": json.dumps(history.run, sort_keys=True),
+            "budget": float(history.run.get("budget") or np.nan),
+            "start_defect": history.start.defect,
+            "start_cumulative_defect": history.start.cumulative_defect,
+            **{name: getattr(history, name) for name in SCALARS},
+            **at_end,
+        }
+    )
+    known = {"": "", "t": "", "x": "", "state": "", "flux": ""}
+    if units:
+        known |= {"t": units.t, "x": units.x, "state": units.state, "flux": units.flux}
+        known |= {"speed": f"{units.x}/{units.t}", "state*speed": f"{units.state} {units.x}/{units.t}"}
+    for name, rows, columns in (
+        ("fronts", history.fronts, FRONT_COLUMNS),
+        ("collisions", history.collisions, COLLISION_COLUMNS),
+    ):
+        group = file.create_group(name)
+        for column, (_, unit, text) in columns.items():
+            _column(group, column, rows[column], known.get(unit, unit), text)
+    levels = file.create_group("levels")
+    _column(levels, "state", history.levels, known["state"], "breakpoints of the polygonal flux")
+    _column(levels, "flux", history.level_fluxes, known["flux"], "flux at each breakpoint")
+    _column(levels, "smooth", history.smooth.astype(np.uint8), "", "1 where the true flux has no kink")
+    start = file.create_group("start")
+    _column(start, "edges", history.start.edges, known["x"], "places of the jumps of the data that were tracked")
+    _column(start, "values", history.start.values, known["state"], "states between them")
+    frames = file.create_group("keyframes")
+    _column(frames, "t", history.keyframe_times, known["t"], "times at which the fronts alive are listed")
+    _column(frames, "first", history.keyframe_starts, "", "where each list begins in ids; one more entry than times")
+    _column(frames, "ids", history.keyframe_ids, "", "rows of the fronts alive, in order of place")
+    if case is not None:
+        _embed(file.create_group("case"), case)
+
+
+def _column(group: h5py.Group, name: str, data: np.ndarray, unit: str, text: str) -> None:
+    """Write one column, compressed where it is long."""
+    data = np.ascontiguousarray(data)
+    options: dict[str, Any] = {"track_times": False}
+    if data.size > 256:
+        options |= {"chunks": (min(len(data), CHUNK), *data.shape[1:]), "compression": "gzip", "compression_opts": 1}
+        options["shuffle"] = True
+    dataset = group.create_dataset(name, data=data, **options)
+    dataset.attrs["units"], dataset.attrs["description"] = unit, text
+
+
+def _embed(group: h5py.Group, case: Case) -> None:
+    """Put the case's words and tables into the file."""
+    group.attrs["sha256"] = case.sha256
+    group.attrs["file"] = Path(case.path).name
+    for key in ("scenario", "source"):
+        group.attrs[key] = getattr(case, key)
+    for name, data in {"text": case.text.encode(), **{f"tables/{n}": d for n, d in case.tables.items()}}.items():
+        raw = np.frombuffer(data, dtype=np.uint8)
+        dataset = group.create_dataset(name.replace("..", "_"), data=raw, track_times=False)
+        dataset.attrs["sha256"] = hashlib.sha256(data).hexdigest()
+        dataset.attrs["description"] = "bytes of the case file" if name == "text" else "bytes of a table it names"
+
+
+@contextlib.contextmanager
+def opened(path: str | Path) -> Iterator[h5py.File]:
+    """Open a history file for reading and check what it is.
+
+    Raises
+    ------
+    InputError
+        Where it does not exist, is no HDF5, is truncated, holds something else or is of another version.
+    """
+    import h5py
+
+    path = Path(path)
+    if not path.is_file():
+        raise InputError("does not exist", file=str(path), mend="check the path, or make it with wavekin run")
+    try:
+        file = h5py.File(path, "r")
+    except OSError as error:
+        truncated = "truncated" in str(error)
+        rule = "is truncated" if truncated else "is no HDF5 file"
+        raise InputError(
+            rule, file=str(path), mend="run the case again" if truncated else "give a file made by wavekin run"
+        ) from error
+    with file:
+        kind, version = file.attrs.get("format"), file.attrs.get("format_version")
+        if kind != FORMAT:
+            raise InputError(
+                "is no Wavekin history", file=str(path), key="format", value=kind, mend="give one made by wavekin run"
+            )
+        if version != FORMAT_VERSION:
+            raise InputError(
+                f"must be format version {FORMAT_VERSION}", file=str(path), key="format_version",
+                value=version if version is None else int(version),
+                mend=f"read it with the program version that wrote it ({file.attrs.get('program_version')})",
+            )  # fmt: skip
+        try:
+            yield file
+        except (KeyError, OSError, ValueError) as error:
+            if isinstance(error, InputError):
+                raise
+            raise InputError(f"is damaged ({error})", file=str(path), mend="run the case again") from error
+
+
+def load(path: str | Path) -> History:
+    """Read a history back, equal to the one saved bit for bit.
+
+    Raises
+    ------
+    InputError
+        As `opened`.
+    """
+    from wavekin.history import History
+    from wavekin.laws import law_from_spec
+    from wavekin.profile import Profile
+    from wavekin.records import COLLISION, FRONT
+
+    with opened(path) as file:
+        attrs = file.attrs
+        spec = json.loads(attrs["law"])
+        parts = {}
+        for name, dtype in (("fronts", FRONT), ("collisions", COLLISION)):
+            rows = np.zeros(len(file[name][dtype.names[0]]), dtype)
+            for column in dtype.names:
+                rows[column] = file[name][column][()]
+            parts[name] = rows
+        ring = attrs["ring"]
+        defects = {"defect": attrs["start_defect"], "cumulative_defect": attrs["start_cumulative_defect"]}
+        return History(
+            **parts,
+            start=Profile(file["start/edges"][()], file["start/values"][()], **defects),
+            ring=(float(ring[0]), float(ring[1])) if len(ring) else None,
+            levels=file["levels/state"][()],
+            level_fluxes=file["levels/flux"][()],
+            smooth=file["levels/smooth"][()].astype(bool),
+            law=law_from_spec(spec) if spec else None,
+            run=json.loads(attrs["run"]),
+            keyframe_times=file["keyframes/t"][()],
+            keyframe_starts=file["keyframes/first"][()],
+            keyframe_ids=file["keyframes/ids"][()],
+            **{name: float(attrs[name]) for name in SCALARS},
+        )
+
+
+def read_words(path: str | Path) -> dict[str, Any]:
+    """Return the words of a history file: title, caution, law, units, hash and text of the case."""
+    with opened(path) as file:
+        attrs = file.attrs
+        words = {key: str(attrs[key]) for key in ("title", "caution", "law_name", "law_formula", "law_source")}
+        words |= {key: "" for key in ("scenario", "source", "sha256", "case_text")}
+        words["program_version"] = str(attrs["program_version"])
+        words["units"] = json.loads(attrs["units"])
+        if "case" in file:
+            group = file["case"]
+            words |= {key: str(group.attrs[key]) for key in ("scenario", "source", "sha256")}
+            words["case_text"] = group["text"][()].tobytes().decode("utf-8", "replace")
+        return words
