@@ -39,7 +39,8 @@ class Check:
         return bool(self.worst <= self.limit)
 
     def __str__(self) -> str:
-        return f"{'holds ' if self.holds else 'FAILS '} {self.name:<18} {self.worst:10.3g} <= {self.limit:<10.3g} {self.text}"
+        verdict = "holds" if self.holds else "FAILS"
+        return f"{verdict}  {self.name:<14} {self.worst:10.3g} <= {self.limit:<10.3g} {self.text}"
 
 
 @dataclass(frozen=True)

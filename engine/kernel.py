@@ -255,7 +255,7 @@ def start(walk, table, scratch, fronts, live, inside, left_side, right_side, siz
 
 
 @njit(cache=True)
-def advance(
+def advance(  # type: ignore[no-untyped-def]
     walk,
     table,
     scratch,

@@ -138,7 +138,8 @@ def _validate(content: dict[str, Any]) -> None:
     faults = sorted(Draft202012Validator(schema()).iter_errors(content), key=relevance, reverse=True)
     if not faults:
         return
-    fault = faults[0]
+    # a key that is missing may be there under a mistyped name, so unknown keys are told first
+    fault = next((fault for fault in faults if fault.validator == "additionalProperties"), faults[0])
     place = ".".join(str(part) if isinstance(part, str) else f"[{part}]" for part in fault.absolute_path).replace(
         ".[", "["
     )
@@ -260,5 +261,6 @@ def _projected(content: dict[str, Any], ring: tuple[float, float] | None, run: d
         raise InputError("must be the whole ring", key="on", value=on, mend="drop it")
     if ring is None and "outside" not in content:
         raise InputError("is missing", key="outside", mend="give the states left and right of the interval")
-    share = content.get("share", PROJECTION_SHARE * run["error"] if run.get("error", 0.0) > 0.0 else DEFAULT_SHARE)
+    usual = PROJECTION_SHARE * run["error"] if run.get("error", 0.0) > 0.0 else DEFAULT_SHARE
+    share = content.get("share", usual)
     return project(function, on=tuple(on), outside=tuple(content["outside"]) if ring is None else None, share=share)

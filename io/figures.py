@@ -10,7 +10,6 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.errors import InputError
 from wavekin.io.store import written_beside
 from wavekin.records import KINDS

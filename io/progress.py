@@ -24,6 +24,7 @@ class Progress:
         return self
 
     def __call__(self, t: float, alive: int, collisions: int) -> None:
+        """Move the bar."""
         if self.quiet:
             return
         if self._bar is None:

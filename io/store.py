@@ -12,7 +12,6 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
-
 from wavekin.errors import InputError
 from wavekin.version import __version__
 
@@ -262,7 +261,7 @@ def read_words(path: str | Path) -> dict[str, Any]:
     with opened(path) as file:
         attrs = file.attrs
         words = {key: str(attrs[key]) for key in ("title", "caution", "law_name", "law_formula", "law_source")}
-        words |= {key: "" for key in ("scenario", "source", "sha256", "case_text")}
+        words |= dict.fromkeys(("scenario", "source", "sha256", "case_text"), "")
         words["program_version"] = str(attrs["program_version"])
         words["units"] = json.loads(attrs["units"])
         if "case" in file:

@@ -5,7 +5,6 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
-
 from wavekin.records import KINDS
 
 if TYPE_CHECKING:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
+import itertools
 from pathlib import Path
 
 from wavekin.errors import InputError
@@ -86,7 +87,7 @@ def _number(cell: str, file: str, key: str) -> float:
 
 def in_increasing_order(column: list[float], name: str, file: str) -> None:
     """Raise InputError for the first value of a column that is not above the one before."""
-    for i, (before, value) in enumerate(zip(column[:-1], column[1:], strict=True)):
+    for i, (before, value) in enumerate(itertools.pairwise(column)):
         if not value > before:
             word = "is there twice" if value == before else "does not increase"
             raise InputError(

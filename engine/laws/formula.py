@@ -16,7 +16,6 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.errors import InputError
 from wavekin.laws.law import Law, Units
 
@@ -93,10 +92,14 @@ def _check(node: ast.AST, names: set[str], key: str, depth: int) -> None:
         case ast.UnaryOp(op=ast.USub() | ast.UAdd(), operand=operand):
             _check(operand, names, key, depth + 1)
         case ast.BinOp(left=left, op=op, right=right) if type(op) in _OPERATORS:
-            if isinstance(op, ast.Pow) and isinstance(right, ast.Constant) and abs(right.value) > MAX_EXPONENT:  # type: ignore[operator]
-                raise InputError(f"takes exponents up to {MAX_EXPONENT:g}", key=key, value=right.value, mend="lower it")
             _check(left, names, key, depth + 1)
             _check(right, names, key, depth + 1)
+            if isinstance(op, ast.Pow) and isinstance(right, ast.Constant):
+                exponent = float(right.value)  # type: ignore[arg-type]
+                if abs(exponent) > MAX_EXPONENT:
+                    raise InputError(
+                        f"takes exponents up to {MAX_EXPONENT:g}", key=key, value=exponent, mend="lower it"
+                    )
         case ast.Call(func=ast.Name(id=name), args=arguments, keywords=[]):
             if name not in FUNCTIONS:
                 raise InputError("has an unknown function", key=key, value=name, mend=_nearest(name, set(FUNCTIONS)))

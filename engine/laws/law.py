@@ -199,7 +199,9 @@ class Law:
                         low, high = float(u[i + 1]), float(u[j + 1])
                         values = [float(np.asarray(second(np.array([x])))[0]) for x in (low, high)]
                         if values[0] * values[1] < 0.0:
-                            root = brentq(lambda x: float(np.asarray(second(np.array([x])))[0]), low, high, xtol=1e-15)
+                            root = brentq(
+                                lambda x, f=second: float(np.asarray(f(np.array([x])))[0]), low, high, xtol=1e-15
+                            )
                             found.append(float(root))
                             continue
                     found.append(float(brentq(curvature, u[i + 1], u[j + 1], xtol=1e-15)))

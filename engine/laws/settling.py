@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.errors import InputError
 from wavekin.laws.law import Law, Units
 from wavekin.laws.parameters import between, number, positive

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-
 from wavekin.laws.law import Law, Units
 from wavekin.laws.parameters import positive
 
@@ -61,7 +60,7 @@ def langmuir(velocity: float, phase_ratio: float, capacity: float, affinity: flo
             "capacity": top,
             "affinity": k,
             "largest": most,
-        },  # fmt: skip
+        },
         source="I. Langmuir 1918; H.-K. Rhee, R. Aris and N. R. Amundson 1986",
         units=BED,
     )

@@ -1,0 +1,125 @@
+"""The command line, run in the process where that is enough and as a process where it is not."""
+
+from __future__ import annotations
+
+import json
+import signal
+import subprocess
+import sys
+import time
+from pathlib import Path
+
+import pytest
+from wavekin.io.command import main
+
+BOX = '[law]\nname = "burgers"\n[start]\nedges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]\n[run]\nuntil = 4.0\nlevels = 33\n'
+
+
+@pytest.fixture
+def case(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
+    monkeypatch.chdir(tmp_path)
+    path = tmp_path / "box.toml"
+    path.write_text(BOX)
+    return path
+
+
+def test_run_show_audit_check(case: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["check", "box.toml"]) == 0
+    assert main(["run", "box.toml", "--picture", "box.png"]) == 0
+    assert "proven L1 bound" in capsys.readouterr().out
+    assert (case.parent / "box.png").read_bytes().startswith(b"\x89PNG")
+    assert main(["show", "box.h5", "--json"]) == 0
+    known = json.loads(capsys.readouterr().out)
+    # Box of height 1 and width 1: mass 1; after t = 2 the shock is at sqrt(2 t) with strength sqrt(2 / t)
+    # (Lax 1957; Whitham 1974, from memory).
+    assert known["mass_end"] == pytest.approx(1.0, abs=1e-12)
+    assert known["variation_end"] == pytest.approx(2.0 * (2.0 / 4.0) ** 0.5, abs=2.0 / 32)
+    assert main(["audit", "box.h5"]) == 0
+
+
+def test_audit_of_a_tampered_file_fails_with_status_1(case: Path) -> None:
+    import h5py
+
+    assert main(["run", "box.toml", "--quiet"]) == 0
+    with h5py.File("box.h5", "a") as file:
+        file["fronts/speed"][3] *= 1.001
+    assert main(["audit", "box.h5"]) == 1
+
+
+@pytest.mark.parametrize(
+    "words, part",
+    [
+        (["run", "none.toml"], "does not exist"),
+        (["run", "signal_quue"], "did you mean signal_queue?"),
+        (["run", "box.toml", "-o", "no/such/box.h5"], "folder"),
+        (["run", "box.toml", "-o", "."], "folder"),
+        (["run", "box.toml", "--picture", "box.bmp"], ".png, .svg or .pdf"),
+        (["run", "box.toml", "-o", "there.h5"], "exists already"),
+        (["audit", "box.toml"], "no HDF5"),
+        (["show", "none.h5"], "does not exist"),
+        (["cases", "--copy", "."], "needs the name"),
+    ],
+)
+def test_bad_input_is_one_sentence_and_status_2(
+    case: Path, capsys: pytest.CaptureFixture[str], words: list[str], part: str
+) -> None:
+    Path("there.h5").write_text("precious")
+    assert main(words) == 2
+    out, err = capsys.readouterr()
+    assert part in err and err.startswith("wavekin: ") and err.count("\n") == 1 and "Traceback" not in err
+    assert Path("there.h5").read_text() == "precious"
+    assert sorted(p.name for p in case.parent.iterdir()) == ["box.toml", "there.h5"]
+
+
+@pytest.mark.parametrize("words", [[], ["fly"], ["run"], ["run", "box.toml", "--fast"]])
+def test_wrong_words_leave_with_status_2(case: Path, words: list[str], capsys: pytest.CaptureFixture[str]) -> None:
+    with pytest.raises(SystemExit) as caught:
+        main(words)
+    assert caught.value.code == 2
+    assert capsys.readouterr().err.count("\n") == 1
+
+
+def test_help_imports_nothing_heavy() -> None:
+    """Counts modules, not seconds: help must answer at once on a slow machine too."""
+    code = (
+        "import sys\nfrom wavekin.io.command import main\n"
+        "try:\n    main(['--help'])\nexcept SystemExit:\n    pass\n"
+        "heavy = {'numpy', 'scipy', 'numba', 'matplotlib', 'h5py', 'sympy', 'jsonschema'} & set(sys.modules)\n"
+        "assert not heavy, heavy\nassert len(sys.modules) < 250, len(sys.modules)\n"
+    )
+    subprocess.run([sys.executable, "-c", code], check=True, capture_output=True)
+
+
+def test_small_run_does_without_the_compiler() -> None:
+    code = (
+        "import sys, wavekin as wk\n"
+        "wk.track(wk.burgers(), wk.Profile([0.0, 1.0], [0.0, 1.0, 0.0]), 4.0, levels=33)\n"
+        "assert not {'numba', 'scipy', 'sympy'} & set(sys.modules)\n"
+    )
+    subprocess.run([sys.executable, "-c", code], check=True)
+
+
+def test_interrupt_leaves_no_half_written_file_and_says_so(case: Path) -> None:
+    text = BOX.replace("levels = 33", 'levels = 900\nloop = "queue"').replace(
+        "edges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]", 'formula = "sin(x)"\non = [0.0, 200.0]\noutside = [0.0, 0.0]\nshare=0.05'
+    )
+    case.write_text(text)
+    process = subprocess.Popen(
+        [sys.executable, "-m", "wavekin.io", "run", "box.toml"], stderr=subprocess.PIPE, text=True, cwd=case.parent
+    )
+    time.sleep(2.5)
+    process.send_signal(signal.SIGINT)
+    _, err = process.communicate(timeout=30)
+    assert process.returncode == 130
+    assert "nothing half-written" in err and "Traceback" not in err
+    assert [p.name for p in case.parent.iterdir()] == ["box.toml"]
+
+
+def test_cases_are_listed_shown_and_copied(case: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["cases"]) == 0
+    assert "ring_decay" in capsys.readouterr().out
+    Path("copy").mkdir()
+    assert main(["cases", "ring_decay", "--copy", "copy"]) == 0
+    assert sorted(p.name for p in Path("copy").iterdir()) == ["ring_decay.csv", "ring_decay.toml"]
+    assert main(["check", "copy/ring_decay.toml"]) == 0
+    assert main(["cases", "ring_decay", "--copy", "copy"]) == 2
