@@ -28,8 +28,9 @@ STROKES: dict[str, tuple[str, float, Any]] = {
 }
 #: Figures with more fronts than this hold them as one image inside the vector file.
 RASTER_FROM = 20_000
-#: At most this many fan fronts are drawn; of more, every n-th, and the legend says so.
-MOST_FANS = 60_000
+#: Fronts weaker than this share of the states' span are drawn only where they cross one of as many even states, so
+#: that fans look the same at every resolution: as contours of the state.
+CONTOURS = 48
 
 
 @contextmanager
@@ -93,29 +94,38 @@ def _cut(lines: NDArray[np.float64], a: float, b: float) -> NDArray[np.float64]:
     return np.stack([begin, end], axis=1)
 
 
+def drawn(history: History) -> NDArray[np.bool_]:
+    """Return which fronts a picture shows: the strong ones, and of the weak ones those at even states."""
+    fronts = history.fronts
+    low, span = float(history.levels[0]), float(np.ptp(history.levels)) or 1.0
+    cells = [np.floor((fronts[side] - low) / span * CONTOURS + 0.5) for side in ("left", "right")]
+    return np.asarray(cells[0] != cells[1])
+
+
 def draw_fronts(axes: Axes, history: History, legend: bool = True) -> None:
     """Draw all fronts in the x-t plane: shocks thick, fans thin, contacts dashed."""
     from matplotlib.collections import LineCollection
     from matplotlib.lines import Line2D
 
     handles = []
-    many = len(history.fronts) > RASTER_FROM
+    shown = np.flatnonzero(drawn(history))
+    many = len(shown) > RASTER_FROM
+    kinds = history.fronts["kind"][shown]
+    span = float(np.ptp(history.levels))
     for number, kind in enumerate(KINDS):
-        rows = np.flatnonzero(history.fronts["kind"] == number)
+        rows = shown[kinds == number]
         if not len(rows) or kind not in STROKES:
             continue
         colour, width, dashes = STROKES[kind]
-        every = 1
-        if kind == "fan" and len(rows) > MOST_FANS:
-            every = -(-len(rows) // MOST_FANS)
-            rows = rows[::every]
-        lines = LineCollection(
-            list(segments(history, rows)), colors=colour, linewidths=width * (0.6 if many else 1.0), linestyles=dashes,
-            zorder=2 if kind == "fan" else 3, rasterized=many, capstyle="butt",
-        )  # fmt: skip
-        axes.add_collection(lines, autolim=False)
-        words = kind if every == 1 else f"{kind} (every {every}th)"
-        handles.append(Line2D([], [], color=colour, linewidth=max(width, 0.9), linestyle=dashes, label=words))
+        strength = np.abs(history.fronts["right"][rows] - history.fronts["left"][rows])
+        for part, share in ((rows[strength * CONTOURS < span], 0.5), (rows[strength * CONTOURS >= span], 1.0)):
+            if len(part):
+                lines = LineCollection(
+                    list(segments(history, part)), colors=colour, linewidths=max(width * share, 0.5) * (0.6 if many else 1.0),
+                    linestyles=dashes, zorder=2 if kind == "fan" else 3, rasterized=many, capstyle="butt",
+                )  # fmt: skip
+                axes.add_collection(lines, autolim=False)
+        handles.append(Line2D([], [], color=colour, linewidth=max(width, 0.9), linestyle=dashes, label=kind))
     x_label, t_label, _ = labels(history)
     axes.set(xlabel=x_label, ylabel=t_label, xlim=extent(history), ylim=(0.0, history.until))
     if legend and handles:
