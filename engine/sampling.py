@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -57,6 +58,15 @@ class Snapshot:
         limit = 2.0 * np.minimum(np.abs(middle - left), np.abs(right - middle))
         self.slopes[1:-1][inside] = np.sign(rise) * np.minimum(np.abs(rise), limit) / width[inside]
 
+    def value(self, x: NDArray[np.float64], side: str) -> NDArray[np.float64]:
+        """Return the solution at places, on the "left" or "right" of a front that sits there."""
+        piece = np.searchsorted(self.edges, x, side="right" if side == "right" else "left")
+        if not len(self.edges):
+            return self.values[piece]
+        low = self.edges[np.maximum(piece - 1, 0)]
+        high = self.edges[np.minimum(piece, len(self.edges) - 1)]
+        return self.values[piece] + self.slopes[piece] * (x - 0.5 * (low + high))
+
     def primitive(self, x: NDArray[np.float64]) -> NDArray[np.float64]:
         """Return the integral of the solution from a fixed place up to each place in `x`."""
         if not len(self.edges):
@@ -69,6 +79,65 @@ class Snapshot:
         middle = 0.5 * (base + edges[np.minimum(piece, len(edges) - 1)])
         along = x - base
         return begun + along * (values[piece] + slopes[piece] * (0.5 * (x + base) - middle))
+
+
+def points(
+    history: History, x: ArrayLike, times: ArrayLike | float, fans: str = "joined"
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Return the solution left and right of places, each of shape (times, places); they differ where a front sits.
+
+    Parameters
+    ----------
+    x : array_like, shape (k,)
+        Places; on a ring within it.
+    times : array_like or float
+    fans : {"joined", "steps"}
+    """
+    x = np.atleast_1d(np.asarray(x, dtype=float))
+    if not np.all(np.isfinite(x)):
+        raise InputError("must be finite", key="points", value=x, mend="give plain numbers")
+    times = np.atleast_1d(np.asarray(times, dtype=float))
+    left, right = np.empty((len(times), len(x))), np.empty((len(times), len(x)))
+    for k, t in enumerate(times):
+        snapshot = Snapshot(history, float(t), fans)
+        left[k], right[k] = snapshot.value(x, "left"), snapshot.value(x, "right")
+    return left, right
+
+
+@dataclass(frozen=True)
+class Sample:
+    """Cell averages of a history at times, with what is proven about them.
+
+    Attributes
+    ----------
+    cells : ndarray, shape (n + 1,)
+    times : ndarray, shape (k,)
+    averages : ndarray, shape (k, n)
+    l1_bound : ndarray, shape (k,)
+        Proven L1 error of the solution with stepped fans (unit of state times unit of x).
+    cumulative_bound : ndarray, shape (k,)
+        Proven error of any amount between one place and minus infinity or the ring's start.
+    average_bound : ndarray, shape (k, n)
+        Proven error of each average of stepped fans: the smaller of the L1 bound and twice the cumulative bound,
+        over the cell's width. (The error's integral over a cell is at most its L1 norm, and is the difference of
+        two cumulative errors.)
+    """
+
+    cells: NDArray[np.float64]
+    times: NDArray[np.float64]
+    averages: NDArray[np.float64]
+    l1_bound: NDArray[np.float64]
+    cumulative_bound: NDArray[np.float64]
+    average_bound: NDArray[np.float64]
+
+
+def sample(history: History, cells: ArrayLike, times: ArrayLike | float, fans: str = "joined") -> Sample:
+    """Return exact cell averages with their bounds; see `History.averages` for the arguments."""
+    edges, at = np.asarray(cells, dtype=float), np.atleast_1d(np.asarray(times, dtype=float))
+    values = averages(history, edges, at, fans)
+    l1 = np.array([history.error_bound(t) for t in at])
+    cumulative = np.array([history.cumulative_bound(t) for t in at])
+    return Sample(edges, at, values, l1, cumulative, np.minimum(l1, 2.0 * cumulative)[:, None] / np.diff(edges))
 
 
 def averages(history: History, cells: ArrayLike, times: ArrayLike | float, fans: str = "joined") -> NDArray[np.float64]:

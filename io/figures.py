@@ -111,7 +111,7 @@ def draw_fronts(axes: Axes, history: History, legend: bool = True) -> None:
     shown = np.flatnonzero(drawn(history))
     many = len(shown) > RASTER_FROM
     kinds = history.fronts["kind"][shown]
-    span = float(np.ptp(history.levels))
+    span, thinner = float(np.ptp(history.levels)), 0.6 if many else 1.0
     for number, kind in enumerate(KINDS):
         rows = shown[kinds == number]
         if not len(rows) or kind not in STROKES:
@@ -121,7 +121,7 @@ def draw_fronts(axes: Axes, history: History, legend: bool = True) -> None:
         for part, share in ((rows[strength * CONTOURS < span], 0.5), (rows[strength * CONTOURS >= span], 1.0)):
             if len(part):
                 lines = LineCollection(
-                    list(segments(history, part)), colors=colour, linewidths=max(width * share, 0.5) * (0.6 if many else 1.0),
+                    list(segments(history, part)), colors=colour, linewidths=max(width * share, 0.5) * thinner,
                     linestyles=dashes, zorder=2 if kind == "fan" else 3, rasterized=many, capstyle="butt",
                 )  # fmt: skip
                 axes.add_collection(lines, autolim=False)

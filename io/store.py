@@ -232,16 +232,11 @@ def load(path: str | Path) -> History:
     with opened(path) as file:
         attrs = file.attrs
         spec = json.loads(attrs["law"])
-        parts = {}
-        for name, dtype in (("fronts", FRONT), ("collisions", COLLISION)):
-            rows = np.zeros(len(file[name][dtype.names[0]]), dtype)
-            for column in dtype.names:
-                rows[column] = file[name][column][()]
-            parts[name] = rows
         ring = attrs["ring"]
         defects = {"defect": attrs["start_defect"], "cumulative_defect": attrs["start_cumulative_defect"]}
         return History(
-            **parts,
+            fronts=_rows(file["fronts"], FRONT),
+            collisions=_rows(file["collisions"], COLLISION),
             start=Profile(file["start/edges"][()], file["start/values"][()], **defects),
             ring=(float(ring[0]), float(ring[1])) if len(ring) else None,
             levels=file["levels/state"][()],
@@ -252,8 +247,20 @@ def load(path: str | Path) -> History:
             keyframe_times=file["keyframes/t"][()],
             keyframe_starts=file["keyframes/first"][()],
             keyframe_ids=file["keyframes/ids"][()],
-            **{name: float(attrs[name]) for name in SCALARS},
+            until=float(attrs["until"]),
+            initial_defect=float(attrs["initial_defect"]),
+            initial_cumulative_defect=float(attrs["initial_cumulative_defect"]),
+            flux_gap=float(attrs["flux_gap"]),
         )
+
+
+def _rows(group: h5py.Group, dtype: np.dtype) -> np.ndarray:
+    """Return columns as records."""
+    columns = list(dtype.names or ())
+    rows = np.zeros(len(group[columns[0]]), dtype)
+    for column in columns:
+        rows[column] = group[column][()]
+    return rows
 
 
 def read_words(path: str | Path) -> dict[str, Any]:

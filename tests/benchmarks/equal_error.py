@@ -102,7 +102,8 @@ def main(targets: tuple[float, ...] = (1e-3, 1e-4)) -> None:
             for scheme in CELLS:
                 theirs, guessed = time_at(target, results[scheme])
                 note = " (extrapolated)" if guessed else ""
-                print(f"  to error {target:g}: {scheme} {theirs:.3g} s{note}, tracking {ours:.3g} s, ratio {theirs / ours:.3g}")
+                print(f"  to error {target:g}: {scheme} {theirs:.3g} s{note}, tracking {ours:.3g} s", end="")
+                print(f", ratio {theirs / ours:.3g}")
 
 
 if __name__ == "__main__":

@@ -48,7 +48,8 @@ def logged(problem: tuple, until: float) -> NDArray[np.float64]:
     The copy logs in the last rows of the queue's own array, which is made long enough.
     """
     text = Path(kernel.__file__).read_text().replace("cache=True", "")
-    note = "    n = int(heap[-1, 0])\n    heap[-2 - n, 0], heap[-2 - n, 1], heap[-2 - n, 2] = {row}\n    heap[-1, 0] = n + 1\n"
+    note = "    n = int(heap[-1, 0])\n    heap[-2 - n, 0], heap[-2 - n, 1], heap[-2 - n, 2] = {row}\n"
+    note += "    heap[-1, 0] = n + 1\n"
     push, drop = (
         '"""Add a row to the heap of `size` rows."""\n',
         '"""Remove the first row of the heap of `size` rows."""\n',
@@ -94,7 +95,8 @@ def measure(
     problem = _problem(name, jumps, levels)
     with tempfile.TemporaryDirectory() as folder:
         path = Path(folder) / "log.npy"
-        command = f"import floor, numpy; numpy.save({str(path)!r}, floor.logged(floor._problem({name!r}, {jumps}, {levels}), {until}))"
+        problem_text = f"floor._problem({name!r}, {jumps}, {levels})"
+        command = f"import floor, numpy; numpy.save({str(path)!r}, floor.logged({problem_text}, {until}))"
         # in a process of its own, so that its memory does not lie in the way of what is measured
         subprocess.run([sys.executable, "-c", command], check=True, cwd=Path(__file__).parent)
         log = np.load(path)

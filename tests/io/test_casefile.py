@@ -63,7 +63,9 @@ levels = 33
 
 def test_formula_start_is_projected_within_a_quarter_of_the_budget(tmp_path: Path) -> None:
     text = GOOD.replace("edges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]", 'formula = "0.5+sin(2*pi*x)/2"')
-    text = text.replace("levels = 17", "error = 0.02").replace("[run]", '[domain]\nkind="ring"\nfrom=0.0\nto=1.0\n[run]')
+    text = text.replace("levels = 17", "error = 0.02").replace(
+        "[run]", '[domain]\nkind="ring"\nfrom=0.0\nto=1.0\n[run]'
+    )
     case = read_case(write(tmp_path, text))
     assert 0.0 < case.start.defect <= 0.005
     history = case.track()

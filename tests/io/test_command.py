@@ -12,7 +12,9 @@ from pathlib import Path
 import pytest
 from wavekin.io.command import main
 
-BOX = '[law]\nname = "burgers"\n[start]\nedges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]\n[run]\nuntil = 4.0\nlevels = 33\n'
+BOX = (
+    '[law]\nname = "burgers"\n[start]\nedges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]\n[run]\nuntil = 4.0\nlevels = 33\n'
+)
 
 
 @pytest.fixture
@@ -65,7 +67,7 @@ def test_bad_input_is_one_sentence_and_status_2(
 ) -> None:
     Path("there.h5").write_text("precious")
     assert main(words) == 2
-    out, err = capsys.readouterr()
+    _, err = capsys.readouterr()
     assert part in err and err.startswith("wavekin: ") and err.count("\n") == 1 and "Traceback" not in err
     assert Path("there.h5").read_text() == "precious"
     assert sorted(p.name for p in case.parent.iterdir()) == ["box.toml", "there.h5"]
@@ -101,7 +103,8 @@ def test_small_run_does_without_the_compiler() -> None:
 
 def test_interrupt_leaves_no_half_written_file_and_says_so(case: Path) -> None:
     text = BOX.replace("levels = 33", 'levels = 900\nloop = "queue"').replace(
-        "edges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]", 'formula = "sin(x)"\non = [0.0, 200.0]\noutside = [0.0, 0.0]\nshare=0.05'
+        "edges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]",
+        'formula = "sin(x)"\non = [0.0, 200.0]\noutside = [0.0, 0.0]\nshare=0.05',
     )
     case.write_text(text)
     process = subprocess.Popen(
