@@ -176,9 +176,7 @@ def _upwind_flux(f: Callable[[float], float], left: float, right: float) -> floa
 
 
 @njit
-def _unfixed(
-    f: Callable[[float], float], extrema: Array, u: Array, ratio: float, steps: int, periodic: bool
-) -> Array:
+def _unfixed(f: Callable[[float], float], extrema: Array, u: Array, ratio: float, steps: int, periodic: bool) -> Array:
     n = len(u) - 2 * GHOSTS
     for _ in range(steps):
         _fill(u, periodic)
@@ -214,9 +212,7 @@ def _limited_change(
 
 
 @njit
-def _limited(
-    f: Callable[[float], float], extrema: Array, u: Array, ratio: float, steps: int, periodic: bool
-) -> Array:
+def _limited(f: Callable[[float], float], extrema: Array, u: Array, ratio: float, steps: int, periodic: bool) -> Array:
     n = len(u) - 2 * GHOSTS
     first, change = u.copy(), np.zeros(len(u))
     for _ in range(steps):
@@ -261,9 +257,7 @@ def _weno_change(
 
 
 @njit
-def _weno5(
-    f: Callable[[float], float], extrema: Array, u: Array, ratio: float, steps: int, periodic: bool
-) -> Array:
+def _weno5(f: Callable[[float], float], extrema: Array, u: Array, ratio: float, steps: int, periodic: bool) -> Array:
     n = len(u) - 2 * GHOSTS
     stage, change = u.copy(), np.zeros(len(u))
     for _ in range(steps):

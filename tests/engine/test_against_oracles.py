@@ -181,9 +181,7 @@ def test_collisions_are_exact_to_the_last_bit_where_floats_can_hold_them(on_ring
 
 @pytest.mark.parametrize("on_ring", [False, True], ids=["line", "ring"])
 @pytest.mark.parametrize("make", [lattice, symmetric])
-def test_rows_are_ordered_by_time_and_then_place_within_the_ring(
-    make: Callable[..., Case], on_ring: bool
-) -> None:
+def test_rows_are_ordered_by_time_and_then_place_within_the_ring(make: Callable[..., Case], on_ring: bool) -> None:
     for seed in range(CASES):
         history = run(make(random.Random(seed), on_ring), "queue")
         rows = history.collisions[["t", "x"]].tolist()

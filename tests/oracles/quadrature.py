@@ -52,9 +52,7 @@ def sampled_envelope(
     return u[corners], f[corners]
 
 
-def departure_by_sampling(
-    flux: Callable[[Array], Array], left: float, right: float, samples: int = SAMPLES
-) -> float:
+def departure_by_sampling(flux: Callable[[Array], Array], left: float, right: float, samples: int = SAMPLES) -> float:
     """Return D as the total variation of the sampled envelope less its chord."""
     u, f = sampled_envelope(flux, left, right, samples)
     slope = (f[-1] - f[0]) / (u[-1] - u[0])
@@ -105,7 +103,6 @@ def departure_of_compound(
         crossing = [brentq(lambda u: derivative(u) - slope, a, b, xtol=1e-15)]
     cuts = [a, *crossing, b]
     fan = sum(
-        quad(lambda u: abs(derivative(u) - slope), c, d, epsabs=1e-15, epsrel=1e-13)[0]
-        for c, d in pairwise(cuts)
+        quad(lambda u: abs(derivative(u) - slope), c, d, epsabs=1e-15, epsrel=1e-13)[0] for c, d in pairwise(cuts)
     )
     return float(fan + abs(shock - slope) * abs(right - tangent))

@@ -71,9 +71,7 @@ def hull(polygon: Sequence[Point], left: Fraction, right: Fraction) -> list[Poin
     return corners if lower else corners[::-1]
 
 
-def resolve(
-    polygon: Sequence[Point], t: Fraction, x: Fraction, left: Fraction, right: Fraction
-) -> list[Front]:
+def resolve(polygon: Sequence[Point], t: Fraction, x: Fraction, left: Fraction, right: Fraction) -> list[Front]:
     """Return the fronts of the jump from left to right at (t, x), slowest first; none if equal."""
     if left == right:
         return []
@@ -102,10 +100,8 @@ def track(
         Ends of the ring; collisions are reported in [a, b).
     """
     assert {*values} <= {u for u, _ in polygon}, "the data must stand on breakpoints"
-    if ring is None:
-        pairs = list(pairwise(values))
-    else:
-        pairs = [(values[i - 1], values[i]) for i in range(len(edges))]
+    around = values if ring is None else [values[-1], *values]
+    pairs = list(pairwise(around))[: len(edges)]
     fronts = [
         front
         for x, (left, right) in zip(edges, pairs, strict=True)
@@ -200,6 +196,4 @@ def _outcome(
     while first and places[first - 1] == places[first]:
         first -= 1
     order = [*range(first, len(fronts)), *range(first)]
-    return Outcome(
-        collisions, [fronts[i] for i in order], [places[i] for i in order], [fronts[i].right for i in order]
-    )
+    return Outcome(collisions, [fronts[i] for i in order], [places[i] for i in order], [fronts[i].right for i in order])

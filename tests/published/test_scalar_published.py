@@ -316,18 +316,12 @@ def test_pulse_in_an_s_shaped_law(until: float) -> None:
     m = 0.25 if until == 0.4 else 0.5
     levels = 2049
     h = 1.0 / (levels - 1)
-    history = wk.track(
-        wk.corey(viscosity_ratio=m), wk.Profile([-0.5, 0.0], [0.0, 1.0, 0.0]), until, levels=levels
-    )
+    history = wk.track(wk.corey(viscosity_ratio=m), wk.Profile([-0.5, 0.0], [0.0, 1.0, 0.0]), until, levels=levels)
     left, right = shocks(history, until)[[0, -1]]
     if m == 0.25:
-        assert [place(left, until), place(right, until)] == pytest.approx(
-            [-0.076393202, 0.647213595], abs=5 * h * h
-        )
+        assert [place(left, until), place(right, until)] == pytest.approx([-0.076393202, 0.647213595], abs=5 * h * h)
         assert [left["left"], right["left"]] == pytest.approx([0.105572809, 1.0 / math.sqrt(5.0)], abs=h)
-        assert [left["speed"], right["speed"]] == pytest.approx(
-            [1.05901699437, 1.61803398875], abs=10 * h * h
-        )
+        assert [left["speed"], right["speed"]] == pytest.approx([1.05901699437, 1.61803398875], abs=10 * h * h)
     else:
         assert [left["left"], right["left"]] == pytest.approx([0.183503419072, 0.57735026919], abs=h)
         assert [left["speed"], right["speed"]] == pytest.approx([1.1123724357, 1.36602540378], abs=10 * h * h)
