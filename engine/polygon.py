@@ -63,7 +63,7 @@ class Polygon:
     @cached_property
     def lists(self) -> Walk:
         """The same look-ups as Python lists, which the readable loop reads faster than arrays."""
-        return Walk(*(column.tolist() for column in self.walk))  # type: ignore[attr-defined]
+        return Walk(*(np.asarray(column).tolist() for column in self.walk))
 
     @property
     def top_speed(self) -> float:

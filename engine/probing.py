@@ -142,7 +142,7 @@ def _laps(
     count = np.where(speed != 0.0, np.maximum(last - first + 1.0, 0.0), 0.0).astype(np.int64)
     rows = np.repeat(np.arange(len(begin)), count)
     lap = first[rows] + np.arange(len(rows)) - np.repeat(np.cumsum(count) - count, count)
-    return rows, place + lap * length
+    return rows.astype(np.int64), place + lap * length
 
 
 def passed_bound(history: History, t: float) -> float:

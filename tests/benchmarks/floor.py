@@ -91,7 +91,7 @@ def _problem(name: str, jumps: int, levels: int) -> tuple[Polygon, NDArray[np.fl
 def measure(
     name: str, jumps: int = 100_000, levels: int = 65, until: float = 200.0, repeats: int = 5
 ) -> dict[str, float]:
-    """Return kernel and floor times (s, least of the repeats, on memory used before), their ratio and the counts of one problem."""
+    """Return kernel and floor times (s, least of the repeats, on memory used before), their ratio and the counts."""
     problem = _problem(name, jumps, levels)
     with tempfile.TemporaryDirectory() as folder:
         path = Path(folder) / "log.npy"
