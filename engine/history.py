@@ -137,7 +137,10 @@ class History:
         return x - np.floor((x - a) / (b - a)) * (b - a)
 
     def at(self, t: float) -> Profile:
-        """Return the solution of the polygonal law at time t, right-continuous in t."""
+        """Return the solution of the polygonal law at time t, right-continuous in t.
+
+        A ring without fronts has one edge, at its start, and one value.
+        """
         rows = self.alive(t)
         if not len(rows):
             if self.ring is None:

@@ -15,11 +15,14 @@ from numba import njit
 from numba.extending import register_jitable
 from numpy.typing import NDArray
 from wavekin import envelope, motion
+from wavekin.compilation import use_own_cache
 from wavekin.envelope import MIXED, SINGLE, next_run_end, scan, slope, turning
 from wavekin.motion import meeting_time, position, same_place
 from wavekin.polygon import Polygon, mixed
 from wavekin.records import COLLISION, FRONT, NONE
 from wavekin.tracker import Progress
+
+use_own_cache()
 
 for _function in (
     motion.same_place, motion.position, motion.meeting_time,

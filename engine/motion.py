@@ -8,9 +8,9 @@ from __future__ import annotations
 import math
 
 #: Two places closer than this many ulp of their own size, and of the way the fastest front makes in the time
-#: so far, are one place. It covers the rounding of a birth point, a path and a meeting time (half an ulp each,
-#: for two fronts) with room to spare; merging within it moves mass by round-off only.
-SAME_PLACE_ULPS = 8.0
+#: so far, are one place. The rounding of a birth point, a path and a meeting time is half an ulp each and grows
+#: through earlier collisions; merging within it moves mass by round-off only.
+SAME_PLACE_ULPS = 64.0
 EPSILON = 2.0**-52
 
 

@@ -233,7 +233,8 @@ def _walk(u: NDArray[np.float64], f: NDArray[np.float64]) -> Walk:
     width = np.diff(u)
     slopes = np.diff(f) / width
     size = np.maximum(np.abs(f[:-1]), np.abs(f[1:]))
-    rounding = COLLINEAR_ULPS * EPSILON * (size / width + np.abs(slopes))
+    with np.errstate(over="ignore"):  # a subnormal width makes one line of everything
+        rounding = COLLINEAR_ULPS * EPSILON * (size / width + np.abs(slopes))
     joined = np.abs(np.diff(slopes)) <= np.maximum(rounding[:-1], rounding[1:])
     starts = np.concatenate(([0], np.flatnonzero(~joined) + 1))
     run = np.cumsum(np.concatenate(([0], (~joined).astype(np.int64))))

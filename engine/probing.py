@@ -140,9 +140,9 @@ def _laps(
     first = np.where(speed > 0.0, np.ceil((begin - place) / length), np.ceil((end - place) / length))
     last = np.where(speed > 0.0, np.ceil((end - place) / length), np.ceil((begin - place) / length)) - 1.0
     count = np.where(speed != 0.0, np.maximum(last - first + 1.0, 0.0), 0.0).astype(np.int64)
-    rows = np.repeat(np.arange(len(begin)), count)
+    rows: NDArray[np.int64] = np.repeat(np.arange(len(begin)), count)
     lap = first[rows] + np.arange(len(rows)) - np.repeat(np.cumsum(count) - count, count)
-    return rows.astype(np.int64), place + lap * length
+    return rows, np.asarray(place + lap * length, dtype=float)
 
 
 def passed_bound(history: History, t: float) -> float:

@@ -46,7 +46,9 @@ def replay(history: History) -> Replay:
     if len(fronts) > COMPILED_FROM:
         from numba import njit
         from numba.extending import register_jitable
+        from wavekin.compilation import use_own_cache
 
+        use_own_cache()
         register_jitable(gap_at)
         run = njit(cache=True)(replay_gaps)
     return Replay(*run(fronts, collisions, first_ended, first_born, initial, length, history.until, *scratch))

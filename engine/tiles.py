@@ -33,7 +33,7 @@ CROSSED = 0.3
 #: A slab that resolves fewer collisions than this share of its fronts is followed by slabs with larger tiles.
 WORTHWHILE = 0.1
 #: Meetings this many times the tolerance of one point from a trapezoid's side are left to the triangle beside it.
-SIDE_MARGIN = 64.0
+SIDE_MARGIN = 16.0
 
 
 @njit(cache=True)

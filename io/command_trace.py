@@ -18,9 +18,7 @@ def add(words: argparse._SubParsersAction) -> None:
     which = trace.add_mutually_exclusive_group()
     which.add_argument("--front", type=int, metavar="ROW", help="row of the front")
     which.add_argument("--near", nargs=2, type=float, metavar=("T", "X"), help="the front nearest to a place at a time")
-    which.add_argument(
-        "--statistics", action="store_true", help="collisions by kind, strengths, decay of the whole run"
-    )
+    which.add_argument("--statistics", action="store_true", help="collisions by kind, strengths, decay")
     trace.add_argument("--json", action="store_true", help="as JSON, for machines")
     trace.set_defaults(run=_trace)
 
@@ -91,7 +89,8 @@ def statistics(history: History) -> dict[str, Any]:
 def _story_text(told: dict[str, Any]) -> str:
     ended = "alive at the end" if told["ended"] is None else "ended at t = {:.6g}, x = {:.6g}".format(*told["ended"])
     lines = [
-        f"front {told['front']}: {told['kind']} from {told['left']:.6g} to {told['right']:.6g}, speed {told['speed']:.6g}",
+        f"front {told['front']}: {told['kind']} from {told['left']:.6g} to {told['right']:.6g}"
+        f", speed {told['speed']:.6g}",
         "  born at t = {:.6g}, x = {:.6g}; ".format(*told["born"]) + ended,
         f"  fed by {told['ancestors']} fronts in {told['collisions']} collisions; feeds {told['descendants']} fronts",
     ]
@@ -109,9 +108,8 @@ def _statistics_text(known: dict[str, Any]) -> str:
     for quantity in ("variation", "fronts"):
         fit = known[f"{quantity}_decay"]
         if fit:
-            lines.append(
-                f"  {quantity} ~ t^{fit['exponent']:.4f}  (95 % interval {fit['low']:.4f} to {fit['high']:.4f}, last decade)"
-            )
+            interval = f"95 % interval {fit['low']:.4f} to {fit['high']:.4f}"
+            lines.append(f"  {quantity} ~ t^{fit['exponent']:.4f}  ({interval}, last decade)")
     lines.append("  strengths:")
     edges, counts = known["strengths"]["edges"], known["strengths"]["counts"]
     lines += [f"    {a:10.3g} to {b:<10.3g} {n}" for a, b, n in zip(edges, edges[1:], counts, strict=False) if n]

@@ -25,7 +25,7 @@ def test_two_shocks_merge_and_share_their_jump() -> None:
 
 
 def test_shock_that_eats_a_fan_counts_it_negative_and_tells_the_last_bite() -> None:
-    """Box on four levels: the k-th event is at t = 2 M^2 / ((M - k)(M - k + 1)) (computed by brute force in fractions)."""
+    """Box on M = 4 steps: event k is at t = 2 M^2 / ((M - k)(M - k + 1)) (computed, by brute force in fractions)."""
     history = wk.track(wk.burgers(), wk.Profile([0.0, 1.0], [0.0, 1.0, 0.0]), 20.0, levels=5)
     line = lineage(history, strongest(history))
     assert len(line.collisions) == 3
