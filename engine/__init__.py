@@ -26,6 +26,7 @@ _HOMES = {
     "points": "sampling",
     "project": "profile",
     "sample": "sampling",
+    "score": "scoring",
     "stored": "probing",
     "traces": "probing",
     "track": "tracking",

@@ -246,9 +246,10 @@ class History:
     def cumulative_bound(self, t: float) -> float:
         """Return the proven bound at time t of the error of any amount between two places, or past a place.
 
-        Largest difference of the cumulative data + t * max |f - f_d| (Crandall and Lions 1983).
+        Largest difference of the cumulative data + t * max |f - f_d| (Crandall and Lions 1983), or the L1 bound
+        where that is smaller.
         """
-        return self.initial_cumulative_defect + self._time(t) * self.flux_gap
+        return min(self.initial_cumulative_defect + self._time(t) * self.flux_gap, self.error_bound(t))
 
     # Functionals in time
 
