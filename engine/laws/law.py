@@ -3,22 +3,17 @@
 from __future__ import annotations
 
 import itertools
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from wavekin.errors import InputError
+from wavekin.laws.shape import Flux, bend_of, differences, inflections_of, kinks_of, straight_parts
 
-Flux = Callable[[NDArray[np.float64]], Any]
-
-#: Points at which the curvature of a flux without known inflections is sampled.
-CURVATURE_SAMPLES = 4097
-#: Second differences below this many roundings of the flux count as zero.
-CURVATURE_ULPS = 64.0
-#: Shares of a piece between which its bend is tested.
-BEND_TEST = np.linspace(0.0, 1.0, 9)
+#: States at which a flux is tried when a law is made.
+TRIALS = 1025
 
 
 @dataclass(frozen=True)
@@ -53,16 +48,16 @@ class Law:
     flux : callable
         f, vectorised: states, shape (k,), to fluxes, shape (k,).
     range : tuple of float
-        The admissible states a < b; f must be finite on [a, b].
+        The admissible states a < b; f must be finite and continuous on [a, b].
     derivative, second_derivative : callable, optional
-        f' and f'', vectorised; f' is found by differences where it is not given.
-    kinks : iterable of float
-        States at which f' jumps.
+        f' and f'', vectorised; f' is found by differences where it is not given. They may be infinite at the ends.
+    kinks : iterable of float, optional
+        States at which f' jumps; located by sampling where neither they nor the inflections are given.
     inflections : iterable of float, optional
-        States at which f'' changes its sign; located by sampling 4,097 second differences where not given. What
-        is sampled, not given, is only as sure as that: the proven bound rests on it.
+        States at which f'' changes its sign; located by sampling where not given. What is sampled, not given, is
+        only as sure as that: the proven bound rests on it.
     linear : iterable of (float, float)
-        Intervals on which f is exactly straight.
+        Intervals on which f is exactly straight; recognised where kinks and inflections are located.
     name, formula, source : str
         For people.
     parameters : mapping
@@ -72,18 +67,26 @@ class Law:
     spec : dict, optional
         What `wavekin.laws.law_from_spec` needs to build the law again.
 
+    Attributes
+    ----------
+    pieces : tuple of Piece
+        The range, cut at the special states, with the bend of each part.
+    special : ndarray
+        Kinks, inflections and ends of straight parts strictly inside the range, increasing (unit of state).
+
     Raises
     ------
     InputError
-        Where the range is not two finite numbers in order, or f is not finite and vectorised on it.
+        Where the range is not two finite numbers in order; where f is not vectorised, finite and continuous on
+        it; where it bends both ways between the inflections given.
     """
 
     flux: Flux
     range: tuple[float, float]
     derivative: Flux = field(default=None, kw_only=True)  # type: ignore[assignment]
     second_derivative: Flux | None = field(default=None, kw_only=True)
-    kinks: tuple[float, ...] = field(default=(), kw_only=True)
-    inflections: tuple[float, ...] | None = field(default=None, kw_only=True)
+    kinks: tuple[float, ...] = field(default=None, kw_only=True)  # type: ignore[arg-type]
+    inflections: tuple[float, ...] = field(default=None, kw_only=True)  # type: ignore[arg-type]
     linear: tuple[tuple[float, float], ...] = field(default=(), kw_only=True)
     name: str = field(default="", kw_only=True)
     formula: str = field(default="", kw_only=True)
@@ -96,22 +99,21 @@ class Law:
     special: NDArray[np.float64] = field(init=False)
 
     def __post_init__(self) -> None:
-        a, b = _two_numbers(self.range)
-        put = object.__setattr__
-        put(self, "range", (a, b))
+        self._set("range", _two_numbers(self.range))
         self._check_flux()
-        inside = [float(k) for k in self.kinks if a < k < b]
-        put(self, "kinks", tuple(sorted(inside)))
+        self._set("linear", tuple((float(a), float(b)) for a, b in self.linear))
+        if self.polygon is not None:
+            self._take_polygon()
+        elif self.inflections is None:
+            self._locate()
+        self._set("kinks", self._inside(self.kinks or ()))
+        self._set("inflections", self._inside(self.inflections))
         if self.derivative is None:
-            put(self, "derivative", _differences(self.flux, a, b, self.kinks))
-        if self.inflections is None:
-            found = () if self.polygon is not None else self._located_inflections()
-            put(self, "inflections", found)
-        else:
-            put(self, "inflections", tuple(sorted(float(k) for k in self.inflections if a < k < b)))
-        ends = [end for interval in self.linear for end in interval if a < end < b]
-        put(self, "special", np.unique([*self.kinks, *(self.inflections or ()), *ends]))
-        put(self, "pieces", self._bends())
+            self._set("derivative", differences(self.flux, np.array([self.range[0], *self.kinks, self.range[1]])))
+        ends = self._inside(end for interval in self.linear for end in interval)
+        self._set("special", np.unique([*self.kinks, *self.inflections, *ends]))
+        if self.polygon is None:
+            self._set("pieces", self._bends())
 
     def __repr__(self) -> str:
         return f"Law({self.name or self.formula or 'unnamed'}, states {self.range[0]:g} to {self.range[1]:g})"
@@ -137,25 +139,36 @@ class Law:
             raise InputError(
                 f"must lie in the law's range from {a!r} to {b!r}",
                 key=f"{key}[{bad[0]}]",
-                value=float(states[bad[0]]),
+                value=float(states.ravel()[bad[0]]),
                 mend="change the state or the law",
             )
 
-    def _check_flux(self) -> None:
+    def _set(self, attribute: str, value: Any) -> None:
+        object.__setattr__(self, attribute, value)
+
+    def _inside(self, states: Iterable[float]) -> tuple[float, ...]:
+        """Return the different states strictly inside the range, increasing."""
         a, b = self.range
-        trial = np.linspace(a, b, 65)
+        return tuple(sorted({float(state) for state in states if a < state < b}))
+
+    def _check_flux(self) -> None:
+        """Raise InputError where the flux is not vectorised and finite."""
+        if not callable(self.flux):
+            raise InputError("must be a function of the state", key="flux", value=self.flux, mend="try wk.table_law")
+        a, b = self.range
+        trial = np.linspace(a, b, TRIALS)
         with np.errstate(all="ignore"):
             try:
                 fluxes = np.asarray(self.flux(trial), dtype=float)
             except (TypeError, ValueError) as error:
                 raise InputError(
-                    "must take an array of states and return their fluxes", key="flux", value=str(error),
-                    mend="write it with numpy functions or wrap it in numpy.vectorize",
+                    "must be vectorised: take an array of states and return their fluxes", key="flux",
+                    value=str(error), mend="write it with numpy functions or wrap it in numpy.vectorize",
                 ) from error  # fmt: skip
         if fluxes.shape != trial.shape:
             raise InputError(
-                "must return one flux for each state", key="flux", value=fluxes.shape,
-                mend="write it with numpy functions or wrap it in numpy.vectorize",
+                f"must be vectorised: return one flux for each state, shape {trial.shape}", key="flux",
+                value=fluxes.shape, mend="write it with numpy functions or wrap it in numpy.vectorize",
             )  # fmt: skip
         bad = np.flatnonzero(~np.isfinite(fluxes))
         if bad.size:
@@ -164,65 +177,53 @@ class Law:
                 value=float(fluxes[bad[0]]), mend="narrow the range or change the flux",
             )  # fmt: skip
 
-    def _smooth_intervals(self) -> list[tuple[float, float]]:
-        """Return the intervals between the ends of the range, kinks and straight pieces."""
-        marks = [end for interval in self.linear for end in interval]
-        bounds = np.unique([*self.range, *self.kinks, *marks]).clip(*self.range)
-        bounds = np.unique(bounds)
-        return list(zip(bounds[:-1].tolist(), bounds[1:].tolist(), strict=True))
+    def _take_polygon(self) -> None:
+        """Take corners and pieces from the polygon that the law is."""
+        assert self.polygon is not None
+        u, f = (np.asarray(column, dtype=float) for column in self.polygon)
+        if u.shape != f.shape or u.ndim != 1 or (u[0], u[-1]) != self.range or not (np.diff(u) > 0.0).all():
+            raise InputError(
+                "must hold increasing states over the whole range and their fluxes", key="polygon",
+                value=[u.shape, f.shape], mend="try wk.table_law",
+            )  # fmt: skip
+        self._set("polygon", (u, f))
+        if self.kinks is None:
+            self._set("kinks", tuple(u[1:-1].tolist()))
+        self._set("inflections", self.inflections or ())
+        self._set("pieces", tuple(Piece(float(a), float(b), 0) for a, b in itertools.pairwise(u)))
 
-    def _located_inflections(self) -> tuple[float, ...]:
-        """Return the states where the sampled curvature changes sign, refined by bisection."""
-        from scipy.optimize import brentq
-
+    def _locate(self) -> None:
+        """Locate inflections, and kinks and straight parts where they are not given either."""
+        a, b = self.range
+        if self.kinks is None:
+            self._set("kinks", kinks_of(self.flux, a, b))
+        if not self.linear:
+            corners = [a, *self._inside(self.kinks), b]
+            parts = (straight_parts(self.flux, low, high) for low, high in itertools.pairwise(corners))
+            self._set("linear", tuple(itertools.chain.from_iterable(parts)))
+        ends = (end for interval in self.linear for end in interval)
+        marks = [a, *self._inside([*self.kinks, *ends]), b]
         found: list[float] = []
-        for a, b in self._smooth_intervals():
-            if any(start <= a and b <= end for start, end in self.linear):
-                continue
-            u = np.linspace(a, b, CURVATURE_SAMPLES)
-            step = u[1] - u[0]
+        for low, high in itertools.pairwise(marks):
+            if not self._is_straight(low, high):
+                found += inflections_of(self.flux, self.second_derivative, low, high)
+        self._set("inflections", tuple(found))
 
-            def curvature(state: float, step: float = step, a: float = a, b: float = b) -> float:
-                middle = min(max(state, a + step), b - step)
-                f = np.asarray(self.flux(np.array([middle - step, middle, middle + step])))
-                return float((f[2] - f[1]) - (f[1] - f[0]))
-
-            f = np.asarray(self.flux(u), dtype=float)
-            bends = np.diff(f, 2)
-            noise = CURVATURE_ULPS * np.finfo(float).eps * np.abs(f).max(initial=0.0)
-            sign = np.where(np.abs(bends) > noise, np.sign(bends), 0.0)
-            known = np.flatnonzero(sign)
-            for i, j in itertools.pairwise(known):
-                if sign[i] != sign[j]:
-                    if self.second_derivative is not None:
-                        second = self.second_derivative
-                        low, high = float(u[i + 1]), float(u[j + 1])
-                        values = [float(np.asarray(second(np.array([x])))[0]) for x in (low, high)]
-                        if values[0] * values[1] < 0.0:
-                            root = brentq(
-                                lambda x, f=second: float(np.asarray(f(np.array([x])))[0]), low, high, xtol=1e-15
-                            )
-                            found.append(float(root))
-                            continue
-                    found.append(float(brentq(curvature, u[i + 1], u[j + 1], xtol=1e-15)))
-        return tuple(found)
+    def _is_straight(self, low: float, high: float) -> bool:
+        return any(start <= low and high <= end for start, end in self.linear)
 
     def _bends(self) -> tuple[Piece, ...]:
-        """Return the pieces between special states with the bend that secants of each show."""
-        if self.polygon is not None:
-            corners = np.asarray(self.polygon[0])
-            return tuple(Piece(float(a), float(b), 0) for a, b in itertools.pairwise(corners))
-        bounds = [self.range[0], *self.special.tolist(), self.range[1]]
+        """Return the pieces between special states with the bend that their secants show."""
         pieces = []
-        for a, b in itertools.pairwise(bounds):
-            if any(start <= a and b <= end for start, end in self.linear):
-                pieces.append(Piece(a, b, 0))
-                continue
-            u = a + (b - a) * BEND_TEST
-            f = np.asarray(self.flux(u), dtype=float)
-            excess = float((np.interp(u, u[[0, -1]], f[[0, -1]]) - f)[1:-1].mean())
-            noise = CURVATURE_ULPS * np.finfo(float).eps * float(np.abs(f).max())
-            pieces.append(Piece(a, b, 0 if abs(excess) <= noise else int(np.sign(excess))))
+        for low, high in itertools.pairwise([self.range[0], *self.special.tolist(), self.range[1]]):
+            bend = 0 if self._is_straight(low, high) else bend_of(self.flux, low, high)
+            if bend is None:
+                raise InputError(
+                    f"must hold each state where the bend changes; the flux bends both ways from {low!r} to {high!r}",
+                    key="inflections", value=list(self.inflections),
+                    mend="complete them, or leave them out to have them located",
+                )  # fmt: skip
+            pieces.append(Piece(low, high, bend))
         return tuple(pieces)
 
 
@@ -235,28 +236,3 @@ def _two_numbers(ends: Iterable[float]) -> tuple[float, float]:
     if not (np.isfinite(a) and np.isfinite(b) and a < b):
         raise InputError("must be two finite numbers in order", key="range", value=[a, b], mend="give range = [a, b]")
     return a, b
-
-
-def _differences(flux: Flux, a: float, b: float, kinks: tuple[float, ...]) -> Flux:
-    """Return f' by differences of fourth order that stay between kinks and range ends."""
-    bounds = np.array([a, *kinks, b])
-
-    def derivative(states: NDArray[np.float64]) -> NDArray[np.float64]:
-        u = np.asarray(states, dtype=float)
-        piece = np.searchsorted(bounds[1:-1], u, side="right")
-        low, high = bounds[piece], bounds[piece + 1]
-        h = 1e-3 * (high - low)
-        centre = u.clip(low + 2.0 * h, high - 2.0 * h)
-        # The derivative of the parabola-exact five-point interpolant, taken at u itself.
-        s = (u - centre) / h
-        f = [np.asarray(flux(centre + k * h)) for k in (-2, -1, 0, 1, 2)]
-        weights = (
-            (4 * s**3 - 6 * s**2 - 2 * s + 2) / 24,
-            -(4 * s**3 - 3 * s**2 - 8 * s + 4) / 6,
-            (4 * s**3 - 10 * s) / 4,
-            -(4 * s**3 + 3 * s**2 - 8 * s - 4) / 6,
-            (4 * s**3 + 6 * s**2 - 2 * s - 2) / 24,
-        )
-        return sum(w * value for w, value in zip(weights, f, strict=True)) / h
-
-    return derivative
