@@ -91,6 +91,12 @@ class History:
             f"{len(self.collisions)} collisions, L1 bound {self.error_bound(self.until):.3g})"
         )
 
+    def _repr_html_(self) -> str:
+        """Return a small diagram and the facts, as notebooks show them."""
+        from wavekin.io.notebook import diagram
+
+        return diagram(self)
+
     def __eq__(self, other: object) -> bool:
         if not isinstance(other, History):
             return NotImplemented

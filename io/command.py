@@ -18,7 +18,13 @@ if TYPE_CHECKING:
     from wavekin.io.casefile import Case
 
 #: Modules that add further words; each has ``add(subparsers)``.
-WORDS: tuple[str, ...] = ("wavekin.io.command_sample", "wavekin.io.command_score", "wavekin.io.command_trace")
+WORDS: tuple[str, ...] = (
+    "wavekin.io.command_sample",
+    "wavekin.io.command_score",
+    "wavekin.io.command_trace",
+    "wavekin.io.command_draw",
+    "wavekin.io.command_report",
+)
 
 DESCRIPTION = """Follow every shock, fan and contact of a 1-D hyperbolic conservation law by front tracking,
 with a proven bound on how far the answer can be from the truth."""
