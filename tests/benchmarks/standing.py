@@ -46,7 +46,7 @@ def loops() -> None:
         fast.run(200.0, 10**9)
         collisions = int(fast.count[kernel.COLLISIONS])
         print(
-            f"  {name}: {collisions} collisions, readable {slow:.2f} s, compiled {quick:.3f} s, ratio {slow / quick:.0f}"
+            f"  {name}: {collisions} collisions, readable {slow:.2f} s, compiled {quick:.3f} s, {slow / quick:.0f}-fold"
         )
 
 
@@ -85,7 +85,7 @@ def drift() -> None:
     history = wk.track(wk.burgers(), start, 1e6, levels=65, ring=(0.0, 1.0))
     change = abs(history.mass(1e6) - history.mass(0.0)) / history.mass(0.0)
     print(
-        f"  ring, until 1e6: {len(history.collisions)} collisions, relative drift {change:.1e}, audit {wk.audit(history).holds}"
+        f"  ring, until 1e6: {len(history.collisions)} collisions, drift {change:.1e}, audit {wk.audit(history).holds}"
     )
 
 
