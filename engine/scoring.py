@@ -268,28 +268,35 @@ class Order:
 
 
 def orders(scores: list[Score]) -> list[Order]:
-    """Return the observed L1 orders of candidates of several widths: pairwise, then over the whole range.
+    """Return the observed L1 orders of candidates of several widths: pairwise, then fitted over all.
 
     With errors in [e - b, e + b] the order lies between the logarithms of the extreme ratios. Where that interval
     is wider than a half, the advice names the error budget that would decide it.
     """
     ranked = sorted(scores, key=lambda one: -one.width)
-    pairs = [(a, b) for a, b in pairwise(ranked) if a.width > b.width]
-    if len(pairs) > 1:
-        pairs.append((ranked[0], ranked[-1]))
-    return [_order(coarse, fine) for coarse, fine in pairs]
+    groups = [[a, b] for a, b in pairwise(ranked) if a.width > b.width]
+    if len(groups) > 1:
+        groups.append(ranked)
+    return [_order(group) for group in groups]
 
 
-def _order(coarse: Score, fine: Score) -> Order:
-    ratio = np.log(coarse.width / fine.width)
+def _order(scores: list[Score]) -> Order:
+    """Return the slope of log error over log width by least squares; for two scores the line through them.
+
+    The slope is a weighted sum of the logarithms, so its extremes take each error at the end that its sign asks for.
+    """
+    widths = np.log([score.width for score in scores])
+    weights = (widths - widths.mean()) / np.sum((widths - widths.mean()) ** 2)
+    errors = np.array([[score.l1.low, score.l1.value, score.l1.high] for score in scores])
     with np.errstate(divide="ignore"):
-        low = float(np.log(coarse.l1.low / fine.l1.high) / ratio) if coarse.l1.low > 0.0 else -np.inf
-        high = float(np.log(coarse.l1.high / fine.l1.low) / ratio) if fine.l1.low > 0.0 else np.inf
-        value = float(np.log(coarse.l1.value / fine.l1.value) / ratio) if fine.l1.value > 0.0 else np.inf
+        logs = np.log(errors)
+    low = float(np.sum(weights * np.where(weights > 0.0, logs[:, 0], logs[:, 2])))
+    high = float(np.sum(weights * np.where(weights > 0.0, logs[:, 2], logs[:, 0])))
+    value = float(weights @ logs[:, 1]) if np.all(errors[:, 1] > 0.0) else float("nan")
     decided = high - low <= DECIDED
-    needed = 0.1 * ratio * fine.l1.value
+    needed = 0.1 * float(widths[0] - widths[-1]) * scores[-1].l1.value
     advice = "" if decided else f"cannot be decided with this reference: re-run it with error = {needed:.1g}"
-    return Order(coarse.width, fine.width, Interval(value, low, high), decided, advice)
+    return Order(scores[0].width, scores[-1].width, Interval(value, low, high), decided, advice)
 
 
 def verdicts(scores: list[Score]) -> list[str]:

@@ -15,12 +15,18 @@ def add(words: argparse._SubParsersAction) -> None:
     )
     what.add_argument("--points", metavar="X,X|FROM:TO:COUNT", help="places at which to take the state")
     what.add_argument("--traces", metavar="X,X", help="places at which to follow state, flux and amount passed")
+    what.add_argument(
+        "--arrival", nargs=2, type=float, metavar=("X", "STATE"), help="print when a state first reaches X"
+    )
+    what.add_argument(
+        "--stored", nargs=2, type=float, metavar=("A", "B"), help="amount between two places at the times"
+    )
     kind = sample.add_mutually_exclusive_group()
     kind.add_argument("--edges", dest="kind", action="store_const", const="edges", help="the cells' file holds edges")
     kind.add_argument("--centres", dest="kind", action="store_const", const="centres", help="it holds centres")
     sample.add_argument("--times", metavar="T,T|FROM:TO:COUNT", help="times; for traces every change where left out")
     sample.add_argument("--fans", choices=("joined", "steps"), default="joined", help="lines through fans, or steps")
-    sample.add_argument("-o", "--output", required=True, metavar="FILE.csv|.npz|.nc")
+    sample.add_argument("-o", "--output", metavar="FILE.csv|.npz|.nc", help="needed for all but --arrival")
     sample.add_argument("--replace", action="store_true", help="replace a file that exists")
     sample.add_argument("--quiet", action="store_true", help="no progress")
     sample.set_defaults(run=_sample)
@@ -34,6 +40,10 @@ def _sample(arguments: argparse.Namespace) -> int:
     from wavekin.io.ranges import cells, numbers
     from wavekin.io.store import check_writable, load, read_words
 
+    if arguments.arrival is not None:
+        return _arrival(arguments)
+    if arguments.output is None:
+        raise InputError("is missing", key="--output", mend="give a file that ends in .csv, .npz or .nc")
     check_ending(arguments.output)
     check_writable(arguments.output, arguments.replace)
     if arguments.times is None and arguments.traces is None:
@@ -50,10 +60,15 @@ def _sample(arguments: argparse.Namespace) -> int:
                 progress=lambda done: bar(float(done), len(edges) - 1, done),
             )  # fmt: skip
         return 0
-    from wavekin.probing import passed_bound, traces
+    from wavekin.probing import passed_bound, stored, traces
     from wavekin.sampling import points
 
-    if arguments.points is not None:
+    if arguments.stored is not None:
+        assert times is not None
+        bounds = np.array([2.0 * history.cumulative_bound(float(t)) for t in times])
+        header = ["t", "stored", "bound"]
+        columns = [times, stored(history, *arguments.stored, times, arguments.fans), bounds]
+    elif arguments.points is not None:
         assert times is not None
         x = numbers(arguments.points, "--points")
         left, right = points(history, x, times, arguments.fans)
@@ -69,4 +84,14 @@ def _sample(arguments: argparse.Namespace) -> int:
             parts.append([np.full(len(t), trace.place), t, trace.at(t), trace.fluxes[at], trace.passed(t), bounds])
         columns = [np.concatenate(part) for part in zip(*parts, strict=True)]
     save_rows(arguments.output, header, columns, about, arguments.replace)
+    return 0
+
+
+def _arrival(arguments: argparse.Namespace) -> int:
+    """Print the time at which a state first reaches a place."""
+    from wavekin.io.store import load
+    from wavekin.probing import traces
+
+    place, state = arguments.arrival
+    print(f"{traces(load(arguments.history), place)[0].arrival(state):.12g}")
     return 0

@@ -116,3 +116,17 @@ def test_a_thousand_times_a_hundred_thousand_cells_stay_below_a_gibibyte(made: P
         "assert resource.getrusage(resource.RUSAGE_SELF).ru_maxrss < 2**20, 'over 1 GiB'\n"
     )
     subprocess.run([sys.executable, "-c", code], check=True)
+
+
+def test_arrival_and_stored_amount(made: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Breakthrough at 2/3 pore volumes and mean saturation 2/3 behind the front at x = 1 (Welge 1952, closed form)."""
+    assert main(["sample", str(made / "welge.h5"), "--arrival", "1.0", "0.25"]) == 0
+    assert float(capsys.readouterr().out) == pytest.approx(2.0 / 3.0, rel=1e-5)
+    out = made / "stored.csv"
+    words = ["sample", str(made / "welge.h5"), "--stored", "0", "1", "--times", "0,0.6666666", "-o", str(out)]
+    assert main(words) == 0
+    rows = list(csv.DictReader(line for line in out.read_text().splitlines() if not line.startswith("#")))
+    assert float(rows[1]["stored"]) == pytest.approx(2.0 / 3.0, abs=float(rows[1]["bound"]) + 1e-6)
+    assert (
+        main(["sample", str(made / "welge.h5"), "--stored", "1", "0", "--times", "0", "-o", str(made / "x.csv")]) == 2
+    )
