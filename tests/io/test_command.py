@@ -126,3 +126,26 @@ def test_cases_are_listed_shown_and_copied(case: Path, capsys: pytest.CaptureFix
     assert sorted(p.name for p in Path("copy").iterdir()) == ["ring_decay.csv", "ring_decay.toml"]
     assert main(["check", "copy/ring_decay.toml"]) == 0
     assert main(["cases", "ring_decay", "--copy", "copy"]) == 2
+
+
+def test_progress_shows_on_a_terminal_and_nowhere_else(case: Path) -> None:
+    import os
+    import pty
+
+    code = "from wavekin.io.progress import Progress\nwith Progress(5.0) as bar:\n    bar(2.5, 7, 100)\n"
+    seen = []
+
+    def read(fd: int) -> bytes:
+        seen.append(os.read(fd, 4096))
+        return seen[-1]
+
+    pid, fd = pty.fork()
+    if pid == 0:
+        os.execv(sys.executable, [sys.executable, "-c", code])
+    with pytest.raises(OSError, match="Input/output"):
+        while read(fd):
+            pass
+    os.waitpid(pid, 0)
+    assert b"50% of the time" in b"".join(seen) and b"7 fronts alive" in b"".join(seen)
+    quiet = subprocess.run([sys.executable, "-c", code], capture_output=True, check=True)
+    assert quiet.stderr == b""
