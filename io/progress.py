@@ -32,8 +32,10 @@ class Progress:
             from tqdm import tqdm
 
             layout = "{percentage:3.0f}% of the time |{bar:16}| {elapsed}{postfix}"
-            columns = shutil.get_terminal_size().columns  # 80 where the terminal does not say
-            self._bar = tqdm(total=self.until, bar_format=layout, leave=False, file=sys.stderr, ncols=columns)
+            size = shutil.get_terminal_size()  # 80 x 24 where the terminal does not say
+            self._bar = tqdm(
+                total=self.until, bar_format=layout, leave=False, file=sys.stderr, ncols=size.columns, nrows=size.lines
+            )
         rate = collisions / max(time.perf_counter() - self._begin, 1e-9)
         self._bar.set_postfix_str(f"{alive} fronts alive, {collisions} collisions, {rate:.3g}/s", refresh=False)
         self._bar.n = min(t, self.until)
