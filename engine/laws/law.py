@@ -99,7 +99,7 @@ class Law:
     special: NDArray[np.float64] = field(init=False)
 
     def __post_init__(self) -> None:
-        self._set("range", _two_numbers(self.range))
+        self._set("range", two_numbers(self.range))
         self._check_flux()
         self._set("linear", tuple((float(a), float(b)) for a, b in self.linear))
         if self.polygon is not None:
@@ -149,7 +149,7 @@ class Law:
     def _inside(self, states: Iterable[float]) -> tuple[float, ...]:
         """Return the different states strictly inside the range, increasing."""
         a, b = self.range
-        return tuple(sorted({float(state) for state in states if a < state < b}))
+        return tuple(sorted({float(state) + 0.0 for state in states if a < state < b}))
 
     def _check_flux(self) -> None:
         """Raise InputError where the flux is not vectorised and finite."""
@@ -227,7 +227,7 @@ class Law:
         return tuple(pieces)
 
 
-def _two_numbers(ends: Iterable[float]) -> tuple[float, float]:
+def two_numbers(ends: Iterable[float]) -> tuple[float, float]:
     """Return the ends of a range of states."""
     try:
         a, b = (float(end) for end in ends)

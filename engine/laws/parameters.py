@@ -1,15 +1,18 @@
-"""Checks of the parameters of named laws."""
+"""Checks of the parameters of named laws, and advice on words that are not known."""
 
 from __future__ import annotations
 
+import difflib
 import math
+from collections.abc import Iterable
+from numbers import Real
 
 from wavekin.errors import InputError
 
 
 def number(name: str, value: float) -> float:
     """Return a finite number or raise InputError that names the parameter."""
-    if isinstance(value, bool) or not isinstance(value, (int, float)) or not math.isfinite(value):
+    if isinstance(value, bool) or not isinstance(value, Real) or not math.isfinite(value):
         raise InputError("must be a finite number", key=name, value=value, mend="give a plain number")
     return float(value)
 
@@ -21,8 +24,29 @@ def positive(name: str, value: float) -> float:
     return float(value)
 
 
-def between(name: str, value: float, low: float, high: float) -> float:
-    """Return a number within [low, high] or raise InputError that names the parameter."""
-    if not low <= number(name, value) <= high:
-        raise InputError(f"must lie between {low:g} and {high:g}", key=name, value=value, mend="check its unit")
+def at_least(name: str, value: float, low: float, mend: str) -> float:
+    """Return a finite number not below `low` or raise InputError that names the parameter."""
+    if number(name, value) < low:
+        raise InputError(f"must be at least {low:g}", key=name, value=value, mend=mend)
     return float(value)
+
+
+def above(name: str, value: float, low: float, high: float, mend: str = "check its unit") -> float:
+    """Return a number in (low, high] or raise InputError that names the parameter."""
+    if not low < number(name, value) <= high:
+        raise InputError(f"must lie above {low:g} and not above {high:g}", key=name, value=value, mend=mend)
+    return float(value)
+
+
+def below(name: str, value: float, low: float, high: float, mend: str = "check its unit") -> float:
+    """Return a number in [low, high) or raise InputError that names the parameter."""
+    if not low <= number(name, value) < high:
+        raise InputError(f"must be at least {low:g} and below {high:g}", key=name, value=value, mend=mend)
+    return float(value)
+
+
+def nearest(word: object, known: Iterable[str]) -> str:
+    """Return advice that names the nearest known word."""
+    words = sorted(known)
+    close = difflib.get_close_matches(str(word), words, n=1)
+    return f"did you mean {close[0]}?" if close else f"known are {', '.join(words)}"

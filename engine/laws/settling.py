@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
-from wavekin.errors import InputError
 from wavekin.laws.law import Law, Units
-from wavekin.laws.parameters import between, number, positive
+from wavekin.laws.parameters import above, at_least, number, positive
 
 COLUMN = Units("-", "m/s", "m", "s", "volume fraction", "phi", "depth", "time")
 THICKENER = Units("kg/m3", "kg/(m2 h)", "m", "h", "concentration", "C", "depth", "time")
+
+Array = NDArray[np.float64]
 
 
 def richardson_zaki(terminal_velocity: float, exponent: float = 4.65, maximum: float = 1.0) -> Law:
@@ -22,21 +23,22 @@ def richardson_zaki(terminal_velocity: float, exponent: float = 4.65, maximum: f
     exponent : float
         n, at least 1; about 4.65 in the Stokes range, 2.39 at high particle Reynolds numbers.
     maximum : float
-        Largest volume fraction, states from 0 to it.
+        Largest volume fraction, above 0 and at most 1; states from 0 to it.
 
-    Concave below phi = 2 / (n + 1), convex above.
+    Concave below phi = 2 / (n + 1), convex above. The flux does not vanish at `maximum` where that is below 1: a
+    bed that lets nothing through is a table of its own.
     """
-    v, top = positive("terminal_velocity", terminal_velocity), between("maximum", maximum, 0.0, 1.0)
-    n = number("exponent", exponent)
-    if n < 1.0:
-        raise InputError("must be at least 1", key="exponent", value=exponent, mend="4.65 is usual for small particles")
+    v, top = positive("terminal_velocity", terminal_velocity), above("maximum", maximum, 0.0, 1.0)
+    n = at_least("exponent", exponent, 1.0, "4.65 is usual for small particles")
 
-    def derivative(p: NDArray[np.float64]) -> NDArray[np.float64]:
+    def derivative(p: Array) -> Array:
         p = np.asarray(p, dtype=float)
         return v * (1.0 - p) ** (n - 1.0) * (1.0 - (n + 1.0) * p)
 
-    def second(p: NDArray[np.float64]) -> NDArray[np.float64]:
+    def second(p: Array) -> Array:
         p = np.asarray(p, dtype=float)
+        if n == 1.0:
+            return np.full_like(p, -2.0 * v)
         with np.errstate(divide="ignore"):
             return v * n * (1.0 - p) ** (n - 2.0) * ((n + 1.0) * p - 2.0)
 
@@ -66,7 +68,7 @@ def vesilind(velocity: float, decay: float, maximum: float, underflow: float = 0
     maximum : float
         Largest concentration (kg/m3), states from 0 to it.
     underflow : float
-        Bulk velocity q downwards (m/h).
+        Bulk velocity q downwards (m/h); negative above the feed, where the bulk flows up.
 
     Concave below C = 2 / r, convex above.
     """

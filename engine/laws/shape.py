@@ -136,7 +136,8 @@ def _kink(flux: Flux, low: float, high: float, ends: Interval) -> float | None:
             f"must be continuous, and jumps near {0.5 * (low + high)!r}", key="flux", value=rise,
             mend="narrow the range to one side of the jump or make the flux steep there",
         )  # fmt: skip
-    if jump < 0.3 * first_jump:
+    beside_end = min(low - ends[0], ends[1] - high) < 2.0 * (high - low)  # there f' may grow without bound
+    if jump < 0.3 * first_jump or beside_end:
         return None
     width = high - low
     left, right = np.array([low - width, low]).clip(*ends), np.array([high, high + width]).clip(*ends)

@@ -18,8 +18,10 @@ Array = NDArray[np.float64]
 
 #: Parameters of named laws that have no defaults; a law not listed gets 1.5 for each.
 PARAMETERS = {
+    "brooks_corey": {"saturated": 0.4},
     "corey": {"viscosity_ratio": 0.5},
     "greenshields": {"free_speed": 2.0, "jam_density": 1.0},
+    "smulders": {"critical_density": 0.5},
     "triangular": {"free_speed": 2.0, "jam_density": 1.0, "capacity": 0.5},
 }
 #: Widest span of states taken from a law's range.
