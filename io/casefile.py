@@ -114,7 +114,7 @@ def build_case(content: dict[str, Any], text: str, path: str, read_table: Any) -
     """Return the case that parsed content describes; `read_table(name, key)` returns a table's bytes."""
     tables: dict[str, bytes] = {}
     try:
-        _validate(content)
+        validate(content)
         ring = _ring(content.get("domain", {}))
         run = dict(content["run"])
         law = _law(content["law"], tables, read_table)
@@ -125,17 +125,17 @@ def build_case(content: dict[str, Any], text: str, path: str, read_table: Any) -
     return Case(path, text, tables, law, start, ring, run, **words)
 
 
-def schema() -> dict[str, Any]:
-    """Return the JSON Schema of case files."""
-    return json.loads(files("wavekin.shared").joinpath("case.schema.json").read_text())
+def schema(name: str = "case.schema.json") -> dict[str, Any]:
+    """Return a JSON Schema that comes with the program."""
+    return json.loads(files("wavekin.shared").joinpath(name).read_text())
 
 
-def _validate(content: dict[str, Any]) -> None:
-    """Hold the content against the schema; raise InputError for the first fault, outermost first."""
+def validate(content: dict[str, Any], name: str = "case.schema.json") -> None:
+    """Hold content against a schema; raise InputError for the first fault, outermost first."""
     from jsonschema import Draft202012Validator
     from jsonschema.exceptions import relevance
 
-    faults = sorted(Draft202012Validator(schema()).iter_errors(content), key=relevance, reverse=True)
+    faults = sorted(Draft202012Validator(schema(name)).iter_errors(content), key=relevance, reverse=True)
     if not faults:
         return
     # a key that is missing may be there under a mistyped name, so unknown keys are told first

@@ -24,6 +24,7 @@ WORDS: tuple[str, ...] = (
     "wavekin.io.command_trace",
     "wavekin.io.command_draw",
     "wavekin.io.command_report",
+    "wavekin.io.command_sweep",
 )
 
 DESCRIPTION = """Follow every shock, fan and contact of a 1-D hyperbolic conservation law by front tracking,

