@@ -33,7 +33,7 @@ def _draw(arguments: argparse.Namespace) -> int:
     from wavekin.io.figures import check_format, save_figure, style
     from wavekin.io.ranges import numbers
     from wavekin.io.store import check_writable, load, read_words
-    from wavekin.lineage import lineage, strongest
+    from wavekin.lineage import lineage_of, strongest
 
     check_writable(arguments.output, arguments.replace)
     if arguments.kind != "animation":
@@ -64,6 +64,6 @@ def _draw(arguments: argparse.Namespace) -> int:
                 figure = drawings.functionals(history, title)
             case _:
                 front = strongest(history) if arguments.front is None else arguments.front
-                figure = drawings.ancestry(history, lineage(history, front), title)
+                figure = drawings.ancestry(history, lineage_of(history, front), title)
         save_figure(figure, arguments.output, arguments.replace)
     return 0

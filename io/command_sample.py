@@ -67,7 +67,8 @@ def _sample(arguments: argparse.Namespace) -> int:
         assert times is not None
         bounds = np.array([2.0 * history.cumulative_bound(float(t)) for t in times])
         header = ["t", "stored", "bound"]
-        columns = [times, stored(history, *arguments.stored, times, arguments.fans), bounds]
+        low, high = arguments.stored
+        columns = [times, stored(history, low, high, times, arguments.fans), bounds]
     elif arguments.points is not None:
         assert times is not None
         x = numbers(arguments.points, "--points")

@@ -25,7 +25,7 @@ def add(words: argparse._SubParsersAction) -> None:
 
 def _trace(arguments: argparse.Namespace) -> int:
     from wavekin.io.store import load
-    from wavekin.lineage import front_at, lineage, strongest
+    from wavekin.lineage import front_at, lineage_of, strongest
 
     history = load(arguments.history)
     if arguments.statistics:
@@ -36,7 +36,7 @@ def _trace(arguments: argparse.Namespace) -> int:
         row = arguments.front
     else:
         row = front_at(history, *arguments.near) if arguments.near else strongest(history)
-    told = story(history, lineage(history, row))
+    told = story(history, lineage_of(history, row))
     print(json.dumps(told, indent=2) if arguments.json else _story_text(told))
     return 0
 

@@ -138,7 +138,8 @@ def member_values(study: Study, member: int) -> tuple[dict[str, Any], str]:
         kind = next((kind for kind in DRAWS if kind in way), None)
         if kind is None:
             continue
-        drawn = _drawn(rng, kind, *way[kind], way.get("count"))
+        low, high = way[kind]
+        drawn = _drawn(rng, kind, low, high, way.get("count"))
         values[key] = np.sort(drawn).tolist() if way.get("sorted") else np.asarray(drawn).tolist()
     shares = study.content.get("split", {"train": 1.0})
     weights = np.array([float(shares.get(name, 0.0)) for name in SPLITS])
