@@ -118,10 +118,12 @@ def corey(
 
 def _turn(mobility: float) -> float:
     """Return the inflection of e^2 / (e^2 + M (1-e)^2), the root of 3 e^2 - 2 e^3 = M / (1 + M)."""
+    if mobility > 1.0:  # the mirror image, whose root is small, keeps its digits
+        return 1.0 - _turn(1.0 / mobility)
     share = mobility / (1.0 + mobility)
     e = 0.5 - math.sin(math.asin(1.0 - 2.0 * share) / 3.0)
-    for _ in range(2):  # Newton's steps give back the digits that the angle loses where the root nears 0 or 1
-        if 0.0 < e < 1.0:
+    for _ in range(2):  # Newton's steps give back the digits that the angle loses where the root nears 0
+        if e > 0.0:
             e -= (e * e * (3.0 - 2.0 * e) - share) / (6.0 * e * (1.0 - e))
     return e
 
