@@ -63,9 +63,12 @@ def corey(
     mobility, width = ratio * end, high - low
 
     def shares(s: Array) -> tuple[Array, Array]:
-        """Return mobile saturations of the displacing and the displaced fluid, both exact where they vanish."""
+        """Return mobile saturations of the displacing and the displaced fluid, both exact where they vanish.
+
+        States a rounding beyond the range count as its ends, as in all laws with broken powers.
+        """
         s = np.asarray(s, dtype=float)
-        return (s - low) / width, (high - s) / width
+        return np.maximum(s - low, 0.0) / width, np.maximum(high - s, 0.0) / width
 
     def flux(s: Array) -> Array:
         e, rest = shares(s)

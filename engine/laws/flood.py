@@ -29,15 +29,16 @@ def _power(
 ) -> Law:
     """Return f = factor h^exponent with exponent above 1; its curvature may be unbounded at depth 0."""
 
-    def second(h: Array) -> Array:
+    def power(h: Array, order: int) -> Array:
+        depth = np.maximum(np.asarray(h, dtype=float), 0.0)
         with np.errstate(divide="ignore"):
-            return factor * exponent * (exponent - 1.0) * np.abs(np.asarray(h, dtype=float)) ** (exponent - 2.0)
+            return factor * (1.0, exponent, exponent * (exponent - 1.0))[order] * depth ** (exponent - order)
 
     return Law(
-        lambda h: factor * np.asarray(h, dtype=float) ** exponent,
+        lambda h: power(h, 0),
         (0.0, deepest),
-        derivative=lambda h: factor * exponent * np.asarray(h, dtype=float) ** (exponent - 1.0),
-        second_derivative=second,
+        derivative=lambda h: power(h, 1),
+        second_derivative=lambda h: power(h, 2),
         inflections=(),
         name=name,
         formula=formula,

@@ -199,11 +199,16 @@ def _jet(node: ast.AST, values: Mapping[str, jets.Jet]) -> jets.Jet:
     raise AssertionError(node)
 
 
-def _function(tree: ast.expr, variable: str, values: Mapping[str, float]) -> Function:
-    """Return a tree as a vectorised function; what is not finite is left to the caller."""
+def _function(
+    tree: ast.expr, variable: str, values: Mapping[str, float], ends: tuple[float, float] = (-math.inf, math.inf)
+) -> Function:
+    """Return a tree as a vectorised function; what is not finite is left to the caller.
+
+    Places beyond the ends count as the ends: a rounding beyond, a root or logarithm may not exist.
+    """
 
     def function(x: Array) -> Array:
-        x = np.asarray(x, dtype=float)
+        x = np.asarray(x, dtype=float).clip(*ends)
         with np.errstate(all="ignore"):
             result = _evaluate(tree, {**values, variable: x})
         return np.broadcast_to(np.asarray(result, dtype=float), x.shape).copy()
@@ -233,7 +238,7 @@ def _derivative(tree: ast.expr, values: Mapping[str, float], ends: tuple[float, 
         return np.broadcast_to(np.asarray(result, dtype=float), u.shape).copy()
 
     def function(states: Array) -> Array:
-        u = np.asarray(states, dtype=float)
+        u = np.asarray(states, dtype=float).clip(*ends)
         result = carried(u)
         open_ = np.isnan(result)
         if open_.any():
@@ -352,8 +357,8 @@ def formula_law(
         For a formula outside the grammar, or one that is not finite or passes a singularity on the range.
     """
     tree, values = parse(formula, "u", parameters)
-    flux = _function(tree, "u", values)
     ends = two_numbers(range)
+    flux = _function(tree, "u", values, ends)
     u = np.linspace(ends[0], ends[1], SAMPLES)
     bad = np.flatnonzero(~np.isfinite(flux(u)))
     if bad.size:

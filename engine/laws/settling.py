@@ -31,19 +31,23 @@ def richardson_zaki(terminal_velocity: float, exponent: float = 4.65, maximum: f
     v, top = positive("terminal_velocity", terminal_velocity), above("maximum", maximum, 0.0, 1.0)
     n = at_least("exponent", exponent, 1.0, "4.65 is usual for small particles")
 
+    def fluid(p: Array) -> Array:
+        """Return the share of fluid, 0 a rounding beyond its end."""
+        return np.maximum(1.0 - np.asarray(p, dtype=float), 0.0)
+
     def derivative(p: Array) -> Array:
         p = np.asarray(p, dtype=float)
-        return v * (1.0 - p) ** (n - 1.0) * (1.0 - (n + 1.0) * p)
+        return v * fluid(p) ** (n - 1.0) * (1.0 - (n + 1.0) * p)
 
     def second(p: Array) -> Array:
         p = np.asarray(p, dtype=float)
         if n == 1.0:
             return np.full_like(p, -2.0 * v)
         with np.errstate(divide="ignore"):
-            return v * n * (1.0 - p) ** (n - 2.0) * ((n + 1.0) * p - 2.0)
+            return v * n * fluid(p) ** (n - 2.0) * ((n + 1.0) * p - 2.0)
 
     return Law(
-        lambda p: v * np.asarray(p) * (1.0 - np.asarray(p)) ** n,
+        lambda p: v * np.asarray(p) * fluid(p) ** n,
         (0.0, top),
         derivative=derivative,
         second_derivative=second,

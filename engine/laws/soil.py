@@ -34,7 +34,7 @@ def brooks_corey(conductivity: float, pore_index: float, saturated: float, resid
     exponent, width = 3.0 + 2.0 / index, full - least
 
     def term(theta: NDArray[np.float64], order: int) -> NDArray[np.float64]:
-        e = (np.asarray(theta, dtype=float) - least) / width
+        e = np.maximum(np.asarray(theta, dtype=float) - least, 0.0) / width
         factor = (1.0, exponent, exponent * (exponent - 1.0))[order]
         return k * factor / width**order * e ** (exponent - order)
 

@@ -169,6 +169,16 @@ def test_ends_of_the_range_are_exact_and_quiet(key: str) -> None:
 
 
 @all_laws
+def test_states_a_rounding_beyond_the_range_are_harmless(key: str) -> None:
+    law = law_of(key)
+    a, b = law.range
+    beyond = np.array([np.nextafter(a, -np.inf), np.nextafter(b, np.inf)])
+    scale = np.abs(law.flux(np.linspace(a, b, 9))).max()
+    assert law.flux(beyond) == pytest.approx(law.flux(np.array([a, b])), rel=1e-12, abs=1e-12 * scale)
+    assert not np.isnan(law.derivative(beyond)).any()
+
+
+@all_laws
 def test_every_piece_bends_as_it_says_by_independent_sampling(key: str) -> None:
     law = law_of(key)
     rng = np.random.default_rng(5)

@@ -225,6 +225,11 @@ def test_formula_of_a_named_law_is_that_law() -> None:
     assert again.pieces == own.pieces
 
 
+def test_states_a_rounding_beyond_the_range_count_as_its_ends() -> None:
+    law = formula_law("sqrt(u - 0.1) * sqrt(0.3 - u)", (0.1, 0.3))
+    assert law.flux(np.array([np.nextafter(0.1, 0.0), np.nextafter(0.3, 1.0)])) == pytest.approx([0.0, 0.0], abs=1e-9)
+
+
 def test_letters_of_any_alphabet_may_name_parameters() -> None:
     """Python's parser spells the micro sign as the Greek letter; both find the parameter."""
     for name in ("\u00b5", "\u03bc"):
