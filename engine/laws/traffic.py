@@ -189,7 +189,7 @@ def smulders(free_speed: float, jam_density: float, critical_density: float) -> 
         raise InputError(f"must stay below jam_density = {jam:g}", key="critical_density", value=critical,
                          mend="check its unit")  # fmt: skip
 
-    def dense(k: Array) -> Array:
+    def dense(k: Array) -> NDArray[np.bool_]:
         return np.asarray(k) >= critical
 
     return Law(
