@@ -22,6 +22,7 @@ _HOMES = {
     "Units": "laws",
     "Law": "laws",
     "audit": "auditing",
+    "fit_law": "laws",
     "passed_bound": "probing",
     "points": "sampling",
     "project": "profile",

@@ -110,6 +110,12 @@ def replay_gaps(
         while before[first] >= 0 and ended_at[before[first]] == c and members <= fronts_in[c]:
             first = before[first]
             members += 1
+        if members > fronts_in[c]:  # a whole ring met: its row begins behind the gap that is a lap wide
+            for _ in range(fronts_in[c]):
+                i = before[first]
+                if i < 0 or gap_at(birth_t, birth_x, speed, i, first, t, length, width[i], begun[i]) > 0.5 * length:
+                    break
+                first = i
         last = first
         members = 1
         while after[last] >= 0 and ended_at[after[last]] == c and after[last] != first:

@@ -75,3 +75,11 @@ def test_damage_is_found(history: wk.History, damage: Callable[[wk.History], Non
 def _without_keyframes(history: wk.History) -> wk.History:
     history.keyframe_starts, history.keyframe_ids = np.zeros(1, np.int64), np.zeros(0, np.int32)
     return history
+
+
+def test_a_whole_ring_may_meet_in_one_point() -> None:
+    """A fan of two fronts and the shock behind it meet at once, a lap apart the other way round."""
+    start = wk.Profile([0.0, 8.0], [0.0, 1.0])
+    history = wk.track(wk.cubic(), start, 20.0, ring=(0.0, 16.0), levels=3)
+    assert history.collisions["fronts_in"].tolist() == [3]
+    assert wk.audit(history).holds
