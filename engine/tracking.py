@@ -86,7 +86,7 @@ def track(
     InputError
         Where an argument cannot be used, or the budget or the number of fronts is out of reach.
     """
-    _check(law, start, until, error, levels, ring, loop, keyframes, max_fronts)
+    check_arguments(law, start, until, error, levels, ring, loop, keyframes, max_fronts)
     start = start.without_zero_jumps(ring is not None)
     runner = _Runner(law, start, float(until), ring, loop, int(max_fronts), progress)
     if error is None:
@@ -203,18 +203,18 @@ def _snapping_defect(start: Profile, snapped: Profile, ring: tuple[float, float]
     return float(np.abs(amounts).sum()), float(np.abs(np.cumsum(amounts)).max(initial=0.0))
 
 
-def _check(
+def check_arguments(
     law: Law,
     start: Profile,
     until: float,
-    error: float | None,
-    levels: int | None,
-    ring: tuple[float, float] | None,
-    loop: str,
-    keyframes: int,
-    max_fronts: int,
+    error: float | None = None,
+    levels: int | None = None,
+    ring: tuple[float, float] | None = None,
+    loop: str = "auto",
+    keyframes: int = 0,
+    max_fronts: int = MAX_FRONTS,
 ) -> None:
-    """Raise InputError for the first argument that cannot be used."""
+    """Raise InputError for the first argument of `track` that cannot be used."""
     if not (np.isfinite(until) and until > 0.0):
         raise InputError("must be a finite time above 0", key="until", value=until, mend="give the time to run to")
     if error is not None and levels is not None:

@@ -81,8 +81,8 @@ def _from_csv(path: Path, data: bytes, time: float | None) -> list[Candidate]:
     body = b"".join(line for line in lines if not line.startswith(b"#"))
     header = [cell.strip() for cell in body.decode("utf-8-sig", "replace").split("\n", 1)[0].split(",")]
     names = ("left", "right", "u") if "left" in header else ("x", "u")
-    columns = [np.array(column) for column in read_columns(body, names, file)]
-    times = np.array(read_columns(body, ("t",), file)[0]) if "t" in header else None
+    columns = [np.array(column) for column in read_columns(data, names, file).columns]
+    times = np.array(read_columns(data, ("t",), file).columns[0]) if "t" in header else None
     moments = [_need_time(time, file)] if times is None else sorted(set(times.tolist()))
     if times is not None and time is not None:
         moments = [moment for moment in moments if moment == time]

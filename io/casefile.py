@@ -12,7 +12,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from wavekin.errors import InputError
-from wavekin.io.tables import in_increasing_order, read_bytes, read_columns
+from wavekin.io.tables import read_bytes, read_columns
 
 if TYPE_CHECKING:
     from wavekin.history import History
@@ -61,6 +61,17 @@ class Case:
         """SHA-256 over the text and the tables in order of name."""
         return case_hash(self.text, self.tables)
 
+    def check(self) -> None:
+        """Raise InputError for whatever `track` would refuse before it starts."""
+        from wavekin.tracking import check_arguments
+
+        arguments = dict(self.run)
+        until = arguments.pop("until")
+        try:
+            check_arguments(self.law, self.start, until, ring=self.ring, **arguments)
+        except InputError as error:
+            raise error.located(self.path, _case_key(error.key)) from error
+
     def track(self, progress: Progress | None = None) -> History:
         """Run the case."""
         from wavekin.tracking import track
@@ -85,6 +96,8 @@ def _case_key(key: str) -> str:
     """Return the case file's word for an argument of `track`."""
     homes = {"until": "run", "error": "run", "levels": "run", "keyframes": "run", "max_fronts": "run", "loop": "run"}
     word = key.split("[")[0]
+    if word == "ring":
+        return "domain"
     if word in homes:
         return f"{homes[word]}.{key}"
     return f"start.{key}" if word in ("edges", "values") else key
@@ -105,7 +118,7 @@ def read_case(path: str | Path) -> Case:
         content = tomllib.loads(text)
     except UnicodeDecodeError as error:
         raise InputError("must be UTF-8 text", file=str(path), mend="save it in UTF-8") from error
-    except (tomllib.TOMLDecodeError, RecursionError) as error:
+    except (ValueError, RecursionError) as error:  # ValueError: also a whole number of thousands of digits
         raise InputError(f"is no valid TOML: {error}", file=str(path), mend="mend that line") from error
     return build_case(content, text, str(path), lambda name, key: read_bytes(path.parent / name, key))
 
@@ -114,11 +127,12 @@ def build_case(content: dict[str, Any], text: str, path: str, read_table: Any) -
     """Return the case that parsed content describes; `read_table(name, key)` returns a table's bytes."""
     tables: dict[str, bytes] = {}
     try:
+        _check_sizes(content)
         validate(content)
         ring = _ring(content.get("domain", {}))
         run = dict(content["run"])
         law = _law(content["law"], tables, read_table)
-        start = _start(content["start"], ring, run, tables, read_table)
+        start = _start(content["start"], law, ring, run, tables, read_table)
     except InputError as error:
         raise error if error.file else error.located(path) from error
     words = {key: str(content.get(key, "")).strip() for key in ("title", "scenario", "source", "caution")}
@@ -159,10 +173,26 @@ def validate(content: dict[str, Any], name: str = "case.schema.json") -> None:
         "minItems": f"must have {fault.validator_value} entries",
         "maxItems": f"must have {fault.validator_value} entries",
         "minimum": f"must be at least {fault.validator_value}",
+        "maximum": f"must be at most {fault.validator_value}",
         "exclusiveMinimum": f"must be above {fault.validator_value}",
     }
     mend = str(fault.schema.get("description", "see the schema")) if isinstance(fault.schema, dict) else ""
     raise InputError(words.get(str(fault.validator), fault.message), key=place, value=fault.instance, mend=mend)
+
+
+def _check_sizes(content: Any, place: str = "") -> None:
+    """Raise InputError for a whole number so large that no float holds it."""
+    if isinstance(content, dict):
+        for key, value in content.items():
+            _check_sizes(value, f"{place}.{key}" if place else key)
+    elif isinstance(content, list):
+        for i, value in enumerate(content):
+            _check_sizes(value, f"{place}[{i}]")
+    elif isinstance(content, int):
+        try:
+            float(content)
+        except OverflowError as error:
+            raise InputError("is too large", key=place, value=content, mend="write a smaller number") from error
 
 
 def _ring(domain: dict[str, Any]) -> tuple[float, float] | None:
@@ -197,7 +227,9 @@ def _law(content: dict[str, Any], tables: dict[str, bytes], read_table: Any) -> 
     allowed = {"formula": ("parameters", "range"), "table": ("reading",)}.get(kind)
     for key in rest:
         if allowed is not None and key not in allowed:
-            raise InputError(f"does not go with law.{kind}", key=f"law.{key}", value=rest[key], mend="drop it")
+            close = difflib.get_close_matches(key, allowed, n=1)
+            mend = f"did you mean {close[0]}?" if close else "drop it"
+            raise InputError(f"does not go with law.{kind}", key=f"law.{key}", value=rest[key], mend=mend)
     try:
         if kind == "name":
             return law_from_spec({"name": content["name"], "parameters": rest})
@@ -209,8 +241,7 @@ def _law(content: dict[str, Any], tables: dict[str, bytes], read_table: Any) -> 
         raise error.located(key=error.key if error.key.startswith("law") else f"law.{error.key}") from error
     name = content["table"]
     tables[name] = read_table(name, "law.table")
-    u, f = read_columns(tables[name], ("u", "f"), name)
-    in_increasing_order(u, "u", name)
+    u, f = read_columns(tables[name], ("u", "f"), name, increasing="u").columns
     try:
         return table_law(u, f, rest.get("reading", "polygon"))
     except InputError as error:
@@ -219,6 +250,7 @@ def _law(content: dict[str, Any], tables: dict[str, bytes], read_table: Any) -> 
 
 def _start(
     content: dict[str, Any],
+    law: Law,
     ring: tuple[float, float] | None,
     run: dict[str, Any],
     tables: dict[str, bytes],
@@ -240,12 +272,15 @@ def _start(
         raise error.located(key=f"start.{error.key}") from error
     name = content["table"]
     tables[name] = read_table(name, "start.table")
-    x, u = read_columns(tables[name], ("x", "u"), name)
-    in_increasing_order(x, "x", name)
+    (x, u), lines = read_columns(tables[name], ("x", "u"), name, increasing="x")
     try:
+        low, high = law.range
+        for line, state in zip(lines, u, strict=True):
+            if not low <= state <= high:
+                law.check_states([state], f"line {line}, column u")
         return Profile(x, u) if ring else Profile(x[1:], u)
     except InputError as error:
-        raise error.located(name) from error
+        raise error.located(name, error.key.removesuffix("[0]")) from error
 
 
 def _projected(content: dict[str, Any], ring: tuple[float, float] | None, run: dict[str, Any]) -> Profile:

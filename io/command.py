@@ -151,6 +151,7 @@ def _show(arguments: argparse.Namespace) -> int:
 
 def _check(arguments: argparse.Namespace) -> int:
     case = _case(arguments.case)
+    case.check()
     print(f"{case.path}: {case.law!r}, {len(case.start.edges)} edges, until {case.run['until']:g}: can be run")
     return 0
 

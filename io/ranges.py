@@ -7,7 +7,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 from wavekin.errors import InputError
-from wavekin.io.tables import in_increasing_order, read_bytes, read_columns
+from wavekin.io.tables import read_bytes, read_columns
 
 
 def numbers(text: str, key: str) -> NDArray[np.float64]:
@@ -64,9 +64,7 @@ def cells(text: str, kind: str | None, key: str = "--cells") -> NDArray[np.float
         )
     if named is not None and kind is not None and named != kind:
         raise InputError(f"holds {named}", file=text, key="line 1", value=name, mend=f"drop --{kind}")
-    column = read_columns(data, (name,), text)[0]
-    in_increasing_order(column, name, text)
-    values = np.array(column)
+    values = np.array(read_columns(data, (name,), text, increasing=name).columns[0])
     if len(values) < 2:
         raise InputError("needs two rows or more", file=text, value=len(values), mend="add rows")
     return values if (named or kind) == "edges" else edges_of(values)

@@ -104,6 +104,12 @@ def test_formula_start_is_projected_within_a_quarter_of_the_budget(tmp_path: Pat
         ("[run]", '[domain]\nkind = "torus"\n[run]', ["domain.kind", "one of", "torus"]),
         ("[run]", "[runn]", ["run", "known key"]),
         ("[run]", "[run", ["no valid TOML"]),
+        ("until = 4.0", "until = 1" + "0" * 400, ["run.until", "too large"]),
+        ("until = 4.0", "until = 1" + "0" * 5000, ["no valid TOML"]),
+        ("levels = 17", "levels = 17\nkeyframes = 10000000000", ["run.keyframes", "at most"]),
+        ('name = "burgers"', 'table = "a\\u0000b.csv"', ["law.table", "no name of a file"]),
+        ('name = "burgers"', 'formula = "u**2"\nrnge=[0.0,1.0]', ["law.rnge", "did you mean range?"]),
+        ("[run]", '[domain]\nkind = "ring"\nfrom = 1.0\nto = 0.0\n[run]', ["domain", "in order"]),
     ],
 )
 def test_bad_case_gets_one_sentence(tmp_path: Path, old: str, new: str, words: list[str]) -> None:
@@ -119,8 +125,8 @@ def test_bad_case_gets_one_sentence(tmp_path: Path, old: str, new: str, words: l
 @pytest.mark.parametrize(
     "flux, words",
     [
-        ("u,f\n0,0\n0,1\n", ["row 2", "twice"]),
-        ("u,f\n1,0\n0,1\n", ["row 2", "does not increase", "swapped"]),
+        ("u,f\n0,0\n0,1\n", ["line 3, column u", "twice"]),
+        ("u,f\n1,0\n0,1\n", ["line 3, column u", "does not increase", "swapped"]),
         ("f,u\n0,1\n2,0.5\n", ["does not increase", "swapped"]),
         ("u,f\n0,0\n1,\n", ["line 3, column f", "number"]),
         ("u,f\n0,0\n1,x\n", ["line 3, column f", "number", "'x'"]),
@@ -130,8 +136,16 @@ def test_bad_case_gets_one_sentence(tmp_path: Path, old: str, new: str, words: l
         ("", ["is empty"]),
         ("u,f\n", ["no rows"]),
         ("u,f\n0,0\n", ["two rows"]),
-        ("u,f\n0,0\n1,nan\n", ["row 2", "finite"]),
+        ("u,f\n0,0\n1,nan\n", ["line 3, column f", "finite", "'nan'"]),
         (b"u,f\n0,\xff\n", ["UTF-8"]),
+        ("# measured\n\nu,f\n0,0\n\n0,1\n", ["line 6, column u", "twice"]),
+        ("u,f\n0,0\n,\n1,1\n", ["line 3, column u", "empty"]),
+        ("u,f\n0,0\n1_0,1\n", ["line 3, column u", "number", "'1_0'"]),
+        ("u,f\n0,0\n\u0661,1\n", ["line 3, column u", "number"]),
+        ('u,f\n0,0\n"0,5",1\n', ["line 3, column u", "point", "'0,5'"]),
+        ("u,u,f\n0,0,0\n1,1,1\n", ["line 1", "column u twice"]),
+        ("u,f\n0;0\n1;1\n", ["line 2", "by commas"]),
+        ('u,f\n0,0\n"' + "1" * 200_000 + '",1\n', ["line 3", "no CSV"]),
     ],
 )
 def test_bad_table_gets_one_sentence(tmp_path: Path, flux: str | bytes, words: list[str]) -> None:
@@ -140,6 +154,33 @@ def test_bad_table_gets_one_sentence(tmp_path: Path, flux: str | bytes, words: l
         read_case(path)
     for word in [*words, "flux.csv"]:
         assert word in str(caught.value), str(caught.value)
+
+
+def test_state_of_a_table_outside_the_law_is_told_with_its_line(tmp_path: Path) -> None:
+    text = GOOD.replace("edges = [0.0, 1.0]\nvalues = [0.0, 1.0, 0.0]", 'table = "start.csv"')
+    text = text.replace('name = "burgers"', 'formula = "u**2"\nrange = [0.0, 1.0]')
+    with pytest.raises(wk.InputError, match=r"start.csv: line 4, column u: must lie in the law's range") as caught:
+        read_case(write(tmp_path, text, start="# m\nx,u\n0,1\n1,2\n"))
+    assert "(got 2.0)" in str(caught.value)
+
+
+@pytest.mark.parametrize(
+    "old, new",
+    [
+        ("until = 4.0", "until = 0.0"),
+        ("levels = 17", "levels = 1"),
+        ("levels = 17", "levels = 17\nerror = 0.1"),
+        ("[run]", '[domain]\nkind = "ring"\nfrom = 0.0\nto = 2.0\n[run]'),
+        ('name = "burgers"', 'formula = "u**2"\nrange = [0.0, 0.5]'),
+    ],
+)
+def test_check_refuses_what_a_run_refuses_in_the_same_words(tmp_path: Path, old: str, new: str) -> None:
+    case = read_case(write(tmp_path, GOOD.replace(old, new)))
+    with pytest.raises(wk.InputError) as checked:
+        case.check()
+    with pytest.raises(wk.InputError) as run:
+        case.track()
+    assert str(checked.value) == str(run.value)
 
 
 @pytest.mark.parametrize("name", sorted(ready_cases()))
