@@ -6,9 +6,13 @@ import numpy as np
 from wavekin.laws.law import Law, Units
 from wavekin.laws.parameters import number
 
+#: Burgers' law and plain transport admit states of this size unless told otherwise.
+WIDE = 1e6
 
-def burgers(low: float = -1e6, high: float = 1e6) -> Law:
+
+def burgers(low: float = -WIDE, high: float = WIDE) -> Law:
     """Return Burgers' law, f = u^2 / 2 (Burgers 1948; Hopf 1950), convex; states from `low` to `high`."""
+    low, high = number("low", low), number("high", high)
     return Law(
         lambda u: 0.5 * np.square(u),
         (low, high),
@@ -25,6 +29,7 @@ def burgers(low: float = -1e6, high: float = 1e6) -> Law:
 
 def cubic(low: float = -100.0, high: float = 100.0) -> Law:
     """Return the cubic law, f = u^3, concave below 0 and convex above; states from `low` to `high`."""
+    low, high = number("low", low), number("high", high)
     return Law(
         lambda u: np.asarray(u) ** 3,
         (low, high),
@@ -38,9 +43,9 @@ def cubic(low: float = -100.0, high: float = 100.0) -> Law:
     )
 
 
-def transport(speed: float = 1.0, low: float = -1e6, high: float = 1e6) -> Law:
+def transport(speed: float = 1.0, low: float = -WIDE, high: float = WIDE) -> Law:
     """Return plain transport at one speed, f = speed u: all fronts are contacts."""
-    speed = number("speed", speed)
+    speed, low, high = number("speed", speed), number("low", low), number("high", high)
     ends = np.array([low, high])
     return Law(
         lambda u: speed * np.asarray(u),

@@ -7,7 +7,7 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 from wavekin.laws.law import Law, Units
-from wavekin.laws.parameters import at_least, below, number, positive
+from wavekin.laws.parameters import STEEPEST, below, number, positive, within
 
 #: Places in lengths of the medium, times in pore volumes injected.
 PORE_VOLUMES = Units("-", "-", "L", "PV", "saturation", "s", "distance", "pore volumes injected")
@@ -38,7 +38,7 @@ def corey(
     viscosity_ratio : float
         Viscosity of the displacing over that of the displaced fluid, above 0.
     exponent_displacing, exponent_displaced : float
-        n and m, at least 1.
+        n and m, from 1 to 100.
     gravity : float
         Buoyancy over viscous force of the displaced fluid at its end point: permeability times its end-point
         relative permeability times density difference times g times sine of the dip, over its viscosity times
@@ -54,8 +54,8 @@ def corey(
     With exponents below 2 the curvature is unbounded at an end of the range.
     """
     ratio = positive("viscosity_ratio", viscosity_ratio)
-    n = at_least("exponent_displacing", exponent_displacing, 1.0, "2 is usual")
-    m = at_least("exponent_displaced", exponent_displaced, 1.0, "2 is usual")
+    n = within("exponent_displacing", exponent_displacing, 1.0, STEEPEST, "2 is usual")
+    m = within("exponent_displaced", exponent_displaced, 1.0, STEEPEST, "2 is usual")
     g = number("gravity", gravity)
     end = positive("endpoint_ratio", endpoint_ratio)
     low = below("connate", connate, 0.0, 1.0)

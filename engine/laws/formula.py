@@ -21,7 +21,7 @@ from numpy.typing import NDArray
 from wavekin.errors import InputError
 from wavekin.laws import jets
 from wavekin.laws.law import Law, Units, two_numbers
-from wavekin.laws.parameters import nearest, number
+from wavekin.laws.parameters import finite, nearest
 from wavekin.laws.shape import bisected, kinks_of, straight_parts
 
 MAX_LENGTH = 2000
@@ -109,7 +109,7 @@ def _values(parameters: Mapping[str, float] | None, variable: str) -> dict[str, 
             raise InputError(
                 "must not be named like the variable, pi or a function", key=f"parameters.{name}", mend="rename it"
             )
-        values[unicodedata.normalize("NFKC", str(name))] = number(f"parameters.{name}", value)
+        values[unicodedata.normalize("NFKC", str(name))] = finite(f"parameters.{name}", value)
     return values
 
 

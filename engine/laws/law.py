@@ -231,7 +231,7 @@ def two_numbers(ends: Iterable[float]) -> tuple[float, float]:
     """Return the ends of a range of states."""
     try:
         a, b = (float(end) for end in ends)
-    except (TypeError, ValueError) as error:
+    except (TypeError, ValueError, OverflowError) as error:
         raise InputError("must be two numbers", key="range", value=ends, mend="give range = [a, b]") from error
     if not (np.isfinite(a) and np.isfinite(b) and a < b):
         raise InputError("must be two finite numbers in order", key="range", value=[a, b], mend="give range = [a, b]")

@@ -9,11 +9,28 @@ from numbers import Real
 
 from wavekin.errors import InputError
 
+#: Parameters other than 0 stay within these sizes, so that no product of several leaves the floats.
+SMALLEST, LARGEST = 1e-30, 1e30
+#: Largest exponent in a named law.
+STEEPEST = 100.0
+
+
+def finite(name: str, value: float) -> float:
+    """Return a finite number or raise InputError that names the parameter."""
+    try:
+        if isinstance(value, Real) and not isinstance(value, bool) and math.isfinite(value):
+            return float(value)
+    except OverflowError:  # a whole number beyond the floats
+        pass
+    raise InputError("must be a finite number", key=name, value=value, mend="give a plain number")
+
 
 def number(name: str, value: float) -> float:
-    """Return a finite number or raise InputError that names the parameter."""
-    if isinstance(value, bool) or not isinstance(value, Real) or not math.isfinite(value):
-        raise InputError("must be a finite number", key=name, value=value, mend="give a plain number")
+    """Return a finite number of a usable size or raise InputError that names the parameter."""
+    if finite(name, value) and not SMALLEST <= abs(value) <= LARGEST:
+        raise InputError(
+            f"must be 0 or from {SMALLEST:g} to {LARGEST:g} in size", key=name, value=value, mend="change the unit"
+        )
     return float(value)
 
 
@@ -21,6 +38,13 @@ def positive(name: str, value: float) -> float:
     """Return a finite number above 0 or raise InputError that names the parameter."""
     if number(name, value) <= 0.0:
         raise InputError("must be above 0", key=name, value=value, mend="check its sign and unit")
+    return float(value)
+
+
+def within(name: str, value: float, low: float, high: float, mend: str) -> float:
+    """Return a number in [low, high] or raise InputError that names the parameter."""
+    if not low <= number(name, value) <= high:
+        raise InputError(f"must lie from {low:g} to {high:g}", key=name, value=value, mend=mend)
     return float(value)
 
 

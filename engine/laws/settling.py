@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 from wavekin.laws.law import Law, Units
-from wavekin.laws.parameters import above, at_least, number, positive
+from wavekin.laws.parameters import STEEPEST, above, number, positive, within
 
 COLUMN = Units("-", "m/s", "m", "s", "volume fraction", "phi", "depth", "time")
 THICKENER = Units("kg/m3", "kg/(m2 h)", "m", "h", "concentration", "C", "depth", "time")
@@ -21,7 +21,7 @@ def richardson_zaki(terminal_velocity: float, exponent: float = 4.65, maximum: f
     terminal_velocity : float
         v_t of a single particle (m/s).
     exponent : float
-        n, at least 1; about 4.65 in the Stokes range, 2.39 at high particle Reynolds numbers.
+        n, from 1 to 100; about 4.65 in the Stokes range, 2.39 at high particle Reynolds numbers.
     maximum : float
         Largest volume fraction, above 0 and at most 1; states from 0 to it.
 
@@ -29,7 +29,7 @@ def richardson_zaki(terminal_velocity: float, exponent: float = 4.65, maximum: f
     bed that lets nothing through is a table of its own.
     """
     v, top = positive("terminal_velocity", terminal_velocity), above("maximum", maximum, 0.0, 1.0)
-    n = at_least("exponent", exponent, 1.0, "4.65 is usual for small particles")
+    n = within("exponent", exponent, 1.0, STEEPEST, "4.65 is usual for small particles")
 
     def fluid(p: Array) -> Array:
         """Return the share of fluid, 0 a rounding beyond its end."""

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 from wavekin.laws.law import Law, Units
-from wavekin.laws.parameters import above, below, positive
+from wavekin.laws.parameters import above, below, positive, within
 
 PROFILE = Units("-", "m/d", "m", "d", "water content", "theta", "depth", "time")
 
@@ -21,14 +21,17 @@ def brooks_corey(conductivity: float, pore_index: float, saturated: float, resid
     conductivity : float
         K_s, saturated hydraulic conductivity (m/d).
     pore_index : float
-        lambda, index of the pore sizes' distribution, above 0 (about 0.2 in clay to 3 in sand).
+        lambda, index of the pore sizes' distribution, from 0.05 to 100 (about 0.2 in clay to 3 in sand).
     saturated, residual : float
         Water contents (volume shares) at saturation, at most 1, and below which no water moves.
 
     States are water contents theta from residual to saturated. Valid where capillary gradients are small against
     gravity: drainage of coarse or deep soil, not fronts in clay.
     """
-    k, index = positive("conductivity", conductivity), positive("pore_index", pore_index)
+    k, index = (
+        positive("conductivity", conductivity),
+        within("pore_index", pore_index, 0.05, 100.0, "0.2 to 3 is usual"),
+    )
     full = above("saturated", saturated, 0.0, 1.0, "it is a share of the volume")
     least = below("residual", residual, 0.0, full, "it stays below the saturated content")
     exponent, width = 3.0 + 2.0 / index, full - least

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 from wavekin.errors import InputError
 from wavekin.laws.law import Law, Units
-from wavekin.laws.parameters import positive
+from wavekin.laws.parameters import STEEPEST, positive, within
 
 BED = Units("mol/m3", "mol/(m2 s)", "m", "s", "total concentration", "T", "distance", "time")
 #: Newton's iteration on a convex function falls steadily to the root and then doubles its digits each time.
@@ -92,7 +92,7 @@ def freundlich(velocity: float, phase_ratio: float, coefficient: float, exponent
     coefficient : float
         K of the isotherm (mol/m3 for c = 1 mol/m3).
     exponent : float
-        p, above 0 and not 1 (which is plain transport); 0.5 to 1 is usual.
+        p, from 0.01 to 100 and not 1 (which is plain transport); 0.5 to 1 is usual.
     largest : float
         Largest fluid concentration c (mol/m3); states T from 0 to what it holds.
 
@@ -100,7 +100,8 @@ def freundlich(velocity: float, phase_ratio: float, coefficient: float, exponent
     unbounded at 0.
     """
     v, ratio = positive("velocity", velocity), positive("phase_ratio", phase_ratio)
-    k, p, most = positive("coefficient", coefficient), positive("exponent", exponent), positive("largest", largest)
+    k, most = positive("coefficient", coefficient), positive("largest", largest)
+    p = within("exponent", exponent, 1.0 / STEEPEST, STEEPEST, "0.5 to 1 is usual")
     if p == 1.0:
         raise InputError(
             "must differ from 1, which is plain transport", key="exponent", value=p,
@@ -135,12 +136,14 @@ def freundlich(velocity: float, phase_ratio: float, coefficient: float, exponent
 
     def second(total: Array) -> Array:
         z = root(total)
-        with np.errstate(divide="ignore"):
+        with np.errstate(divide="ignore", over="ignore"):
             return side * v * held * bend * (bend - 1.0) * z ** (bend - 2.0) / rise(z) ** 3
 
+    with np.errstate(over="ignore"):
+        fullest = most + held * float(np.power(most, p))
     return Law(
         lambda total: v * root(total) ** moving,
-        (0.0, most + held * most**p),
+        (0.0, fullest),
         derivative=derivative,
         second_derivative=second,
         inflections=(),
