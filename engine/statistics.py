@@ -25,26 +25,36 @@ class Decay:
     values: NDArray[np.float64]
 
 
+#: What meets at a collision, and what comes of it.
+MEETINGS, OUTCOMES = ("shock-shock", "shock-fan", "fan-fan", "with contact"), ("fan-cancel", "vanished", "split")
+
+
 def collision_kinds(history: History) -> dict[str, int]:
     """Return how many collisions there were of each kind.
 
-    By what meets: ``shock-shock``, ``shock-fan``, ``fan-fan``, ``with contact``; and by what comes of it:
-    ``cancelled`` (nothing) and ``split`` (more fronts than one).
+    By what meets, each collision once (`MEETINGS`): ``shock-shock``, ``shock-fan`` (at least one of each),
+    ``fan-fan``, ``with contact``. By what comes of it (`OUTCOMES`), where a collision may count more than once or
+    not at all: ``fan-cancel`` (part of a fan was cancelled: a fan front met one and variation was lost),
+    ``vanished`` (no front is left), ``split`` (more fronts than one leave).
     """
     fronts, count = history.fronts, len(history.collisions)
     ended = fronts["ended_at"] >= 0
     at, kind = fronts["ended_at"][ended], fronts["kind"][ended]
     has = {k: np.bincount(at[kind == k], minlength=count) > 0 for k in (SHOCK, FAN, CONTACT)}
+    gone = np.bincount(at, weights=np.abs(fronts["right"] - fronts["left"])[ended], minlength=count)
+    left = np.abs(history.collisions["right"] - history.collisions["left"])
     out = history.collisions["fronts_out"]
     plain = ~has[CONTACT]
-    return {
-        "shock-shock": int(np.sum(plain & has[SHOCK] & ~has[FAN])),
-        "shock-fan": int(np.sum(plain & has[SHOCK] & has[FAN])),
-        "fan-fan": int(np.sum(plain & ~has[SHOCK] & has[FAN])),
-        "with contact": int(np.sum(has[CONTACT])),
-        "cancelled": int(np.sum(out == 0)),
-        "split": int(np.sum(out > 1)),
-    }
+    found = (
+        plain & has[SHOCK] & ~has[FAN],
+        plain & has[SHOCK] & has[FAN],
+        plain & ~has[SHOCK] & has[FAN],
+        has[CONTACT],
+        has[FAN] & (gone - left > 1e-12 * gone),
+        out == 0,
+        out > 1,
+    )
+    return {name: int(np.sum(which)) for name, which in zip(MEETINGS + OUTCOMES, found, strict=True)}
 
 
 def strength_histogram(history: History, bins: int = 20) -> tuple[NDArray[np.float64], NDArray[np.int64]]:
@@ -77,13 +87,19 @@ def decay(history: History, quantity: str = "variation", since: float | None = N
     ----------
     quantity : {"variation", "fronts"}
     since : float, optional
-        Begin of the fit; the last of three decades (until / 10) where not given.
+        Begin of the fit; until / 10 where not given.
 
     Returns
     -------
     Decay
-        By least squares on 60 times even in the logarithm; the interval is Student's. The variation of an
-        N-wave falls as t^(-1/2) on the line and as 1 / t on a ring (Lax 1957).
+        By least squares of the logarithms at 60 times even in the logarithm; the interval is Student's and tells
+        scatter about the power law, not whether there is one yet. The variation of an N-wave falls as t^(-1/2) on
+        the line and as 1 / t on a ring (Lax 1957).
+
+    Raises
+    ------
+    InputError
+        For another quantity, a `since` outside the run, or a quantity that has died out.
     """
     from scipy.stats import linregress
     from scipy.stats import t as student

@@ -57,6 +57,8 @@ def story(history: History, line: Lineage) -> dict[str, Any]:
         "ancestors": len(line.ancestors),
         "collisions": len(line.collisions),
         "descendants": len(line.descendants),
+        "feeders": len(line.feeders),
+        "cancelled": line.cancelled,
         "lost_fan": line.lost_fan,
         "jump": float(front["right"] - front["left"]),
         "sources": [
@@ -68,14 +70,18 @@ def story(history: History, line: Lineage) -> dict[str, Any]:
 
 def statistics(history: History) -> dict[str, Any]:
     """Return the statistics of a run as plain data."""
+    import numpy as np
     from wavekin.errors import InputError
-    from wavekin.statistics import collision_kinds, decay, strength_histogram
+    from wavekin.statistics import collision_kinds, decay, series, strength_histogram
 
     edges, counts = strength_histogram(history)
+    times = np.linspace(0.0, history.until, 11)
+    alive, variation = series(history, times)
     known: dict[str, Any] = {
         "collisions": len(history.collisions),
         "kinds": collision_kinds(history),
         "strengths": {"edges": edges.tolist(), "counts": counts.tolist()},
+        "series": {"t": times.tolist(), "fronts": alive.tolist(), "variation": variation.tolist()},
     }
     for quantity in ("variation", "fronts"):
         try:
@@ -94,23 +100,35 @@ def _story_text(told: dict[str, Any]) -> str:
         "  born at t = {:.6g}, x = {:.6g}; ".format(*told["born"]) + ended,
         f"  fed by {told['ancestors']} fronts in {told['collisions']} collisions; feeds {told['descendants']} fronts",
     ]
+    if told["collisions"]:
+        lines.append(
+            f"  behind it {told['feeders']} initial fronts; variation cancelled on the way {told['cancelled']:.6g}"
+        )
     if told["lost_fan"]:
         lines.append("  last fan front absorbed at t = {:.6g}, x = {:.6g}".format(*told["lost_fan"]))
     sources = sorted(told["sources"], key=lambda source: -abs(source["share"]))
-    lines.append(f"  its jump of {told['jump']:.6g} comes from {len(sources)} initial fronts, the largest shares:")
+    many = f"{len(sources)} initial fronts" if len(sources) != 1 else "1 initial front"
+    lines.append(f"  its jump of {told['jump']:.6g} comes from {many}" + (", mostly:" if len(sources) > 12 else ":"))
     lines += [f"    front {s['front']:>7} at x = {s['x']:<12.6g} {s['share']:+.6g}" for s in sources[:12]]
     return "\n".join(lines)
 
 
 def _statistics_text(known: dict[str, Any]) -> str:
-    lines = [f"{known['collisions']} collisions"]
-    lines += [f"  {kind:<14} {count}" for kind, count in known["kinds"].items()]
+    from wavekin.statistics import MEETINGS, OUTCOMES
+
+    lines = [f"{known['collisions']} collisions, by what met"]
+    lines += [f"  {kind:<14} {known['kinds'][kind]}" for kind in MEETINGS]
+    lines += ["by what came of them", *(f"  {kind:<14} {known['kinds'][kind]}" for kind in OUTCOMES)]
+    lines.append("over the last decade of time")
     for quantity in ("variation", "fronts"):
         fit = known[f"{quantity}_decay"]
         if fit:
             interval = f"95 % interval {fit['low']:.4f} to {fit['high']:.4f}"
-            lines.append(f"  {quantity} ~ t^{fit['exponent']:.4f}  ({interval}, last decade)")
-    lines.append("  strengths:")
+            lines.append(f"  {quantity} ~ t^{fit['exponent']:.4f}  ({interval})")
+    lines += ["over time", "  {:>12} {:>10} {:>14}".format("t", "fronts", "variation")]
+    columns = (known["series"][name] for name in ("t", "fronts", "variation"))
+    lines += [f"  {t:12.6g} {fronts:10d} {variation:14.6g}" for t, fronts, variation in zip(*columns, strict=True)]
+    lines.append("strengths of all fronts")
     edges, counts = known["strengths"]["edges"], known["strengths"]["counts"]
-    lines += [f"    {a:10.3g} to {b:<10.3g} {n}" for a, b, n in zip(edges, edges[1:], counts, strict=False) if n]
+    lines += [f"  {a:10.3g} to {b:<10.3g} {n}" for a, b, n in zip(edges, edges[1:], counts, strict=False) if n]
     return "\n".join(lines)

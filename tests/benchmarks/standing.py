@@ -17,7 +17,7 @@ import numpy as np
 import wavekin as wk
 from wavekin import kernel
 from wavekin.io import load, save, save_run_figure
-from wavekin.lineage import lineage, strongest
+from wavekin.lineage import lineage_of, strongest
 from wavekin.ordering import in_order
 from wavekin.polygon import polygon_of
 from wavekin.statistics import collision_kinds, decay
@@ -115,7 +115,7 @@ def answers() -> None:
     n = 50_000
     start = wk.Profile(np.sort(rng.random(n)) * n, rng.random(n + 1))
     history = wk.track(wk.burgers(), start, 2000.0, levels=65)
-    walked = _timed(lambda: (lineage(history, strongest(history)), collision_kinds(history), decay(history)), 1)
+    walked = _timed(lambda: (lineage_of(history, strongest(history)), collision_kinds(history), decay(history)), 1)
     with tempfile.TemporaryDirectory() as folder:
         drawn = _timed(lambda: save_run_figure(history, f"{folder}/a.png"), 1)
         size = Path(folder, "a.png").stat().st_size / 1e6
