@@ -25,6 +25,10 @@ NO_WAVE_ULPS = 32.0
 NEWTON_STEPS = 60
 
 
+#: A Newton step this small in relation to its variable leaves an error of its square, which is rounding.
+LAST_STEP = 2.0**-27
+
+
 class Core(NamedTuple):
     """The functions of one system, all on inner variables; arrays named `out` are filled."""
 

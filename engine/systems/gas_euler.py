@@ -15,7 +15,7 @@ from numpy.typing import ArrayLike, NDArray
 from wavekin.errors import InputError
 from wavekin.laws.parameters import at_least, number
 from wavekin.records import CONTACT, FAN, SHOCK
-from wavekin.systems.cores import CORES, EPSILON, NEWTON_STEPS, NO_WAVE_ULPS, REFUSED_VACUUM, Core, put_wave
+from wavekin.systems.cores import CORES, EPSILON, LAST_STEP, NEWTON_STEPS, NO_WAVE_ULPS, REFUSED_VACUUM, Core, put_wave
 from wavekin.systems.system import System, Variable
 
 
@@ -45,51 +45,67 @@ def velocity_change(p: float, rho: float, pressure: float, sound: float, gamma: 
     return 2.0 * sound / (gamma - 1.0) * stretch, sound / (gamma * p) * (stretch + 1.0)
 
 
+def first_guess(
+    rho_l: float, u_l: float, p_l: float, rho_r: float, u_r: float, p_r: float, gamma: float, sounds: float
+) -> float:
+    """Return a guess of the middle pressure: from linear waves, then from shocks of about that strength."""
+    linear = 0.5 * (p_l + p_r) - 0.125 * (u_r - u_l) * (rho_l + rho_r) * sounds
+    p = max(linear, min(p_l, p_r))
+    share = (gamma - 1.0) / (gamma + 1.0)
+    root_l = math.sqrt(2.0 / ((gamma + 1.0) * rho_l * (p + share * p_l)))
+    root_r = math.sqrt(2.0 / ((gamma + 1.0) * rho_r * (p + share * p_r)))
+    return (root_l * p_l + root_r * p_r - (u_r - u_l)) / (root_l + root_r)
+
+
 def solve_star(
     rho_l: float, u_l: float, p_l: float, rho_r: float, u_r: float, p_r: float, gamma: float
 ) -> tuple[float, float, float, float]:
     """Return pressure and velocity between the waves, and the velocity change over the left and the right wave.
 
-    Where both waves are fans in closed form; else Newton's iteration from below on the increasing concave function
-    of p, inside a bracket, bisected whenever a step leaves it. It ends where the function is within the rounding of
-    its own terms. A vacuum has pressure 0; its velocity is the mean of its two edges.
+    Where both waves are fans in closed form; else Newton's iteration on the increasing concave function of p inside
+    a bracket, bisected whenever a step leaves it. It ends where the function is within the rounding of its own
+    terms, or after a step whose square is below rounding. A vacuum has pressure 0.
     """
     c_l, c_r = math.sqrt(gamma * p_l / rho_l), math.sqrt(gamma * p_r / rho_r)
     rest = u_r - u_l
-    power = 0.5 * (gamma - 1.0) / gamma
-    low = min(p_l, p_r)
+    low, high = min(p_l, p_r), math.inf
     at_low = velocity_change(low, rho_l, p_l, c_l, gamma)[0] + velocity_change(low, rho_r, p_r, c_r, gamma)[0] + rest
     if at_low >= 0.0:
         whole = c_l + c_r - 0.5 * (gamma - 1.0) * rest
         p = 0.0
         if whole > 0.0:
-            top = max(p_l, p_r)
+            top, power = max(p_l, p_r), 0.5 * (gamma - 1.0) / gamma
             p = top * (whole / (c_l * (top / p_l) ** power + c_r * (top / p_r) ** power)) ** (1.0 / power)
             p = min(p, low)
-    else:
-        high = math.inf
+        change_l = velocity_change(p, rho_l, p_l, c_l, gamma)[0]
+        change_r = velocity_change(p, rho_r, p_r, c_r, gamma)[0]
+        return p, 0.5 * (u_l + u_r) + 0.5 * (change_r - change_l), change_l, change_r
+    p = first_guess(rho_l, u_l, p_l, rho_r, u_r, p_r, gamma, c_l + c_r)
+    if not low < p < high:
         p = max(p_l, p_r)
-        for step in range(2 * NEWTON_STEPS):
-            change_l, slope_l = velocity_change(p, rho_l, p_l, c_l, gamma)
-            change_r, slope_r = velocity_change(p, rho_r, p_r, c_r, gamma)
-            value = change_l + change_r + rest
-            if abs(value) <= EPSILON * (abs(change_l) + abs(change_r)):
+    change_l = change_r = 0.0
+    for step in range(2 * NEWTON_STEPS):
+        change_l, slope_l = velocity_change(p, rho_l, p_l, c_l, gamma)
+        change_r, slope_r = velocity_change(p, rho_r, p_r, c_r, gamma)
+        value = change_l + change_r + rest
+        if abs(value) <= EPSILON * (abs(change_l) + abs(change_r)):
+            break
+        if value > 0.0:
+            high = p
+        else:
+            low = p
+        move = -value / (slope_l + slope_r)
+        if abs(move) <= LAST_STEP * p:
+            p += move
+            change_l += slope_l * move
+            change_r += slope_r * move
+            break
+        following = p + move
+        if step >= NEWTON_STEPS or not low < following < high:
+            following = math.sqrt(low) * math.sqrt(high) if high < math.inf else 4.0 * p
+            if not low < following < high:
                 break
-            if value > 0.0:
-                high = p
-            else:
-                low = p
-            following = p - value / (slope_l + slope_r)
-            if step >= NEWTON_STEPS or not low < following < high:
-                following = math.sqrt(low) * math.sqrt(high) if high < math.inf else 4.0 * p
-                if not low < following < high:
-                    break
-            if abs(following - p) <= EPSILON * p:
-                p = following
-                break
-            p = following
-    change_l = velocity_change(p, rho_l, p_l, c_l, gamma)[0]
-    change_r = velocity_change(p, rho_r, p_r, c_r, gamma)[0]
+        p = following
     return p, 0.5 * (u_l + u_r) + 0.5 * (change_r - change_l), change_l, change_r
 
 
@@ -251,7 +267,7 @@ def jump_speed(parameters, family, left, right):  # type: ignore[no-untyped-def]
 
 CORES[EulerParameters] = Core(
     local, inside, strength, measure, mirror, jump_speed,
-    (velocity_change, solve_star, star_density, mass_flux, thin, thick, sound_of, put_state, vacuum_waves),
+    (velocity_change, first_guess, solve_star, star_density, mass_flux, thin, thick, sound_of, put_state, vacuum_waves),
 )  # fmt: skip
 
 

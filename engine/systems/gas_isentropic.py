@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from wavekin.laws.parameters import at_least, positive
 from wavekin.records import FAN, SHOCK
-from wavekin.systems.cores import CORES, EPSILON, NEWTON_STEPS, NO_WAVE_ULPS, REFUSED_VACUUM, Core, put_wave
+from wavekin.systems.cores import CORES, EPSILON, LAST_STEP, NEWTON_STEPS, NO_WAVE_ULPS, REFUSED_VACUUM, Core, put_wave
 from wavekin.systems.system import System, Variable
 
 
@@ -91,7 +91,7 @@ def solve_star(
                 following = math.sqrt(low) * math.sqrt(high) if high < math.inf else 4.0 * p
                 if not low < following < high:
                     break
-            if abs(following - p) <= EPSILON * p:
+            if abs(following - p) <= LAST_STEP * p:
                 p = following
                 break
             p = following

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from wavekin.laws.parameters import positive
 from wavekin.records import CONTACT, FAN, SHOCK
-from wavekin.systems.cores import CORES, EPSILON, NEWTON_STEPS, NO_WAVE_ULPS, Core, put_wave
+from wavekin.systems.cores import CORES, EPSILON, LAST_STEP, NEWTON_STEPS, NO_WAVE_ULPS, Core, put_wave
 from wavekin.systems.system import System, Variable
 
 
@@ -67,7 +67,7 @@ def solve_star(h_l: float, u_l: float, h_r: float, u_r: float, gravity: float) -
                 following = 0.5 * (low + high) if high < math.inf else 4.0 * h
                 if not low < following < high:
                     break
-            if abs(following - h) <= EPSILON * h:
+            if abs(following - h) <= LAST_STEP * h:
                 h = following
                 break
             h = following
