@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import argparse
 import importlib
+import io
 import json
+import os
 import sys
 import time
 from collections.abc import Sequence
@@ -78,8 +80,10 @@ def parser() -> argparse.ArgumentParser:
 
 def main(argv: Sequence[str] | None = None) -> int:
     """Run the command line and return its exit status: 0, 1 (an audit failed), 2 (bad input), 130 (stopped)."""
-    arguments = parser().parse_args(argv)
+    if isinstance(sys.stdout, io.TextIOWrapper):
+        sys.stdout.reconfigure(errors="backslashreplace")  # a title may hold what the terminal's encoding lacks
     try:
+        arguments = parser().parse_args(argv)
         return int(arguments.run(arguments))
     except InputError as error:
         print(f"wavekin: {error}", file=sys.stderr)
@@ -99,7 +103,7 @@ def _case(name: str) -> Case:
     from wavekin.io.casefile import read_case
     from wavekin.io.ready import ready_case
 
-    if not Path(name).exists() and "/" not in name and not name.endswith(".toml"):
+    if not os.path.exists(name) and "/" not in name and not name.endswith(".toml"):
         return ready_case(name)
     return read_case(name)
 
@@ -112,10 +116,15 @@ def _run(arguments: argparse.Namespace) -> int:
 
     case = _case(arguments.case)
     output = Path(arguments.output or f"{Path(case.path).stem}.h5")
-    check_writable(output, arguments.replace)
+    inputs = [Path(case.path), *(Path(case.path).parent / name for name in case.tables)]
+    check_writable(output, arguments.replace, inputs)
     if arguments.picture:
         check_format(arguments.picture)
-        check_writable(arguments.picture, arguments.replace)
+        check_writable(arguments.picture, arguments.replace, inputs)
+        if Path(arguments.picture).resolve() == output.resolve():
+            raise InputError(
+                "is the history's name too", key="--picture", value=arguments.picture, mend="choose another"
+            )
     begin = time.perf_counter()
     with Progress(float(case.run["until"]), arguments.quiet) as progress:
         history = case.track(progress)

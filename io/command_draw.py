@@ -35,7 +35,7 @@ def _draw(arguments: argparse.Namespace) -> int:
     from wavekin.io.store import check_writable, load, read_words
     from wavekin.lineage import lineage_of, strongest
 
-    check_writable(arguments.output, arguments.replace)
+    check_writable(arguments.output, arguments.replace, [arguments.history])
     if arguments.kind != "animation":
         check_format(arguments.output)
     history = load(arguments.history)

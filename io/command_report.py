@@ -18,6 +18,6 @@ def _report(arguments: argparse.Namespace) -> int:
     from wavekin.io.report import save_report
     from wavekin.io.store import check_writable, load, read_words
 
-    check_writable(arguments.output, arguments.replace)
+    check_writable(arguments.output, arguments.replace, [arguments.history])
     save_report(load(arguments.history), arguments.output, read_words(arguments.history), replace=arguments.replace)
     return 0

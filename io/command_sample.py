@@ -45,7 +45,7 @@ def _sample(arguments: argparse.Namespace) -> int:
     if arguments.output is None:
         raise InputError("is missing", key="--output", mend="give a file that ends in .csv, .npz or .nc")
     check_ending(arguments.output)
-    check_writable(arguments.output, arguments.replace)
+    check_writable(arguments.output, arguments.replace, [arguments.history, arguments.cells or arguments.history])
     if arguments.times is None and arguments.traces is None:
         raise InputError("is missing", key="--times", mend="give times such as 0.5,1.0 or FROM:TO:COUNT")
     times = numbers(arguments.times, "--times") if arguments.times is not None else None

@@ -33,7 +33,7 @@ def _score(arguments: argparse.Namespace) -> int:
 
     if arguments.figure:
         check_format(arguments.figure)
-        check_writable(arguments.figure, arguments.replace)
+        check_writable(arguments.figure, arguments.replace, [arguments.history])
     history, words = load(arguments.history), read_words(arguments.history)
     judged: dict[float, list[tuple[str, Score]]] = {}
     for path in arguments.theirs:

@@ -49,6 +49,8 @@ def copy_case(name: str, folder: str | Path) -> list[Path]:
     InputError
         Where the folder is none or a file of that name exists.
     """
+    from wavekin.io.store import written_beside
+
     case = ready_case(name)
     folder = Path(folder)
     if not folder.is_dir():
@@ -59,5 +61,6 @@ def copy_case(name: str, folder: str | Path) -> list[Path]:
         if path.exists():
             raise InputError("exists already", file=str(path), mend="choose another folder")
     for path, data in zip(paths, contents.values(), strict=True):
-        path.write_bytes(data)
+        with written_beside(path) as temporary:
+            temporary.write_bytes(data)
     return paths

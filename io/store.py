@@ -7,7 +7,7 @@ import hashlib
 import json
 import os
 import tempfile
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -26,6 +26,9 @@ FORMAT_VERSION = 1
 CHUNK = 1 << 16
 SUFFIX = ".part"
 
+#: What h5py and the reading of its content raise where bytes are wrong.
+DAMAGE = (KeyError, OSError, ValueError, TypeError, IndexError, AttributeError, OverflowError, RuntimeError)
+
 SCALARS = ("until", "initial_defect", "initial_cumulative_defect", "flux_gap")
 
 
@@ -40,29 +43,51 @@ def written_beside(path: str | Path, replace: bool = False) -> Iterator[Path]:
     """
     path = Path(path)
     check_writable(path, replace)
-    handle, name = tempfile.mkstemp(prefix=f".{path.name}.", suffix=SUFFIX, dir=path.parent)
-    os.close(handle)
-    temporary = Path(name)
+    temporary = None
     try:
+        handle, name = tempfile.mkstemp(prefix=f".{path.name[:80]}.", suffix=SUFFIX, dir=path.parent)
+        os.close(handle)
+        temporary = Path(name)
         yield temporary
         mask = os.umask(0)
         os.umask(mask)
         temporary.chmod(0o666 & ~mask)
+        check_writable(path, replace)  # somebody else may have put a file there in the meantime
         os.replace(temporary, path)
     except OSError as error:
         raise InputError(
             f"cannot be written ({error.strerror or error})", file=str(path), mend="free space or choose another place"
         ) from error
     finally:
-        temporary.unlink(missing_ok=True)
+        if temporary is not None:
+            temporary.unlink(missing_ok=True)
 
 
-def check_writable(path: str | Path, replace: bool = False) -> None:
-    """Raise InputError where a result could not be put at `path`; called before long work starts."""
+def check_writable(path: str | Path, replace: bool = False, inputs: Iterable[str | Path] = ()) -> None:
+    """Raise InputError where a result could not be put at `path`; called before long work starts.
+
+    Whatever `replace` says, devices and the like are left alone, and so are the `inputs` of the work.
+    """
     path = Path(path)
+    try:
+        _check_place(path, replace)
+        taken = any(path.samefile(name) for name in inputs if path.exists() and os.path.exists(name))
+    except (OSError, ValueError) as error:
+        if isinstance(error, InputError):
+            raise
+        reason = error.strerror if isinstance(error, OSError) else error
+        raise InputError(f"cannot be written ({reason})", file=str(path), mend="choose another name") from error
+    if taken:
+        raise InputError("is what this command reads", file=str(path), mend="choose another name for the result")
+
+
+def _check_place(path: Path, replace: bool) -> None:
+    """Raise InputError for a place that is taken, missing or closed, OSError for one that cannot be named."""
     if path.is_dir():
         raise InputError("is a folder", file=str(path), mend="give the name of a file in it")
-    if path.exists() and not replace:
+    if path.exists() and not path.is_file():
+        raise InputError("is a device or the like", file=str(path), mend="give the name of an ordinary file")
+    if os.path.lexists(path) and not replace:
         raise InputError("exists already", file=str(path), mend="choose another name or ask for it with --replace")
     if not path.parent.is_dir():
         raise InputError("is in a folder that does not exist", file=str(path), mend="make the folder first")
@@ -167,11 +192,20 @@ def _embed(group: h5py.Group, case: Case) -> None:
     group.attrs["file"] = Path(case.path).name
     for key in ("scenario", "source"):
         group.attrs[key] = getattr(case, key)
-    for name, data in {"text": case.text.encode(), **{f"tables/{n}": d for n, d in case.tables.items()}}.items():
-        raw = np.frombuffer(data, dtype=np.uint8)
-        dataset = group.create_dataset(name.replace("..", "_"), data=raw, track_times=False)
-        dataset.attrs["sha256"] = hashlib.sha256(data).hexdigest()
-        dataset.attrs["description"] = "bytes of the case file" if name == "text" else "bytes of a table it names"
+    _bytes(group, "text", case.text.encode(), "bytes of the case file")
+    tables = group.create_group("tables") if case.tables else group
+    for name, data in case.tables.items():
+        key = name.replace("/", "_")  # a slash would make a group, and a dot or two would lead elsewhere
+        while key in (".", "..", "") or key in tables:
+            key += "_"
+        _bytes(tables, key, data, "bytes of a table that the case names")
+        tables[key].attrs["name"] = name
+
+
+def _bytes(group: h5py.Group, name: str, data: bytes, text: str) -> None:
+    """Write bytes as they are, with their SHA-256."""
+    dataset = group.create_dataset(name, data=np.frombuffer(data, dtype=np.uint8), track_times=False)
+    dataset.attrs["sha256"], dataset.attrs["description"] = hashlib.sha256(data).hexdigest(), text
 
 
 @contextlib.contextmanager
@@ -186,7 +220,7 @@ def opened(path: str | Path) -> Iterator[h5py.File]:
     import h5py
 
     path = Path(path)
-    if not path.is_file():
+    if not os.path.isfile(path):
         raise InputError("does not exist", file=str(path), mend="check the path, or make it with wavekin run")
     try:
         file = h5py.File(path, "r")
@@ -197,23 +231,30 @@ def opened(path: str | Path) -> Iterator[h5py.File]:
             rule, file=str(path), mend="run the case again" if truncated else "give a file made by wavekin run"
         ) from error
     with file:
-        kind, version = file.attrs.get("format"), file.attrs.get("format_version")
-        if kind != FORMAT:
-            raise InputError(
-                "is no Wavekin history", file=str(path), key="format", value=kind, mend="give one made by wavekin run"
-            )
-        if version != FORMAT_VERSION:
-            raise InputError(
-                f"must be format version {FORMAT_VERSION}", file=str(path), key="format_version",
-                value=version if version is None else int(version),
-                mend=f"read it with the program version that wrote it ({file.attrs.get('program_version')})",
-            )  # fmt: skip
         try:
+            _check_format(file, path)
             yield file
-        except (KeyError, OSError, ValueError) as error:
-            if isinstance(error, InputError):
+        except DAMAGE as error:
+            if isinstance(error, InputError) and error.file:
                 raise
-            raise InputError(f"is damaged ({error})", file=str(path), mend="run the case again") from error
+            key = error.key if isinstance(error, InputError) else ""
+            reason = error.rule if isinstance(error, InputError) else str(error).strip("'\"") or type(error).__name__
+            raise InputError(f"is damaged ({reason})", file=str(path), key=key, mend="run the case again") from error
+
+
+def _check_format(file: h5py.File, path: Path) -> None:
+    """Raise InputError for a file that is no history, or one of another version."""
+    kind, version = file.attrs.get("format"), file.attrs.get("format_version")
+    if not isinstance(kind, str) or kind != FORMAT:
+        raise InputError(
+            "is no Wavekin history", file=str(path), key="format", value=kind, mend="give one made by wavekin run"
+        )
+    if not np.isscalar(version) or version != FORMAT_VERSION:
+        raise InputError(
+            f"must be format version {FORMAT_VERSION}", file=str(path), key="format_version",
+            value=version.item() if isinstance(version, np.generic) else version,
+            mend=f"read it with the program version that wrote it ({file.attrs.get('program_version')})",
+        )  # fmt: skip
 
 
 def load(path: str | Path) -> History:
@@ -222,9 +263,10 @@ def load(path: str | Path) -> History:
     Raises
     ------
     InputError
-        As `opened`.
+        As `opened`, and where the rows do not fit one another (`wavekin.io.soundness`).
     """
     from wavekin.history import History
+    from wavekin.io.soundness import check_sound
     from wavekin.laws import law_from_spec
     from wavekin.profile import Profile
     from wavekin.records import COLLISION, FRONT
@@ -232,34 +274,51 @@ def load(path: str | Path) -> History:
     with opened(path) as file:
         attrs = file.attrs
         spec = json.loads(attrs["law"])
+        try:
+            law = law_from_spec(spec) if spec else None
+        except InputError as error:  # perhaps a law that a later version knows
+            raise error.located(str(path), f"law {error.key}".strip()) from error
         ring = attrs["ring"]
         defects = {"defect": attrs["start_defect"], "cumulative_defect": attrs["start_cumulative_defect"]}
-        return History(
+        history = History(
             fronts=_rows(file["fronts"], FRONT),
             collisions=_rows(file["collisions"], COLLISION),
-            start=Profile(file["start/edges"][()], file["start/values"][()], **defects),
+            start=Profile(_numbers(file["start"], "edges"), _numbers(file["start"], "values"), **defects),
             ring=(float(ring[0]), float(ring[1])) if len(ring) else None,
-            levels=file["levels/state"][()],
-            level_fluxes=file["levels/flux"][()],
-            smooth=file["levels/smooth"][()].astype(bool),
-            law=law_from_spec(spec) if spec else None,
+            levels=_numbers(file["levels"], "state"),
+            level_fluxes=_numbers(file["levels"], "flux"),
+            smooth=_numbers(file["levels"], "smooth").astype(bool),
+            law=law,
             run=json.loads(attrs["run"]),
-            keyframe_times=file["keyframes/t"][()],
-            keyframe_starts=file["keyframes/first"][()],
-            keyframe_ids=file["keyframes/ids"][()],
+            keyframe_times=_numbers(file["keyframes"], "t"),
+            keyframe_starts=_numbers(file["keyframes"], "first", "iu"),
+            keyframe_ids=_numbers(file["keyframes"], "ids", "iu"),
             until=float(attrs["until"]),
             initial_defect=float(attrs["initial_defect"]),
             initial_cumulative_defect=float(attrs["initial_cumulative_defect"]),
             flux_gap=float(attrs["flux_gap"]),
         )
+        check_sound(history)
+        return history
+
+
+def _numbers(group: h5py.Group, name: str, kinds: str = "fiu") -> np.ndarray:
+    """Return a column; raise ValueError where it is none of numbers of these kinds."""
+    column = group[name][()]
+    if not isinstance(column, np.ndarray) or column.ndim != 1 or column.dtype.kind not in kinds:
+        raise ValueError(f"{group.name}/{name} is no column of numbers")
+    return column
 
 
 def _rows(group: h5py.Group, dtype: np.dtype) -> np.ndarray:
     """Return columns as records."""
     columns = list(dtype.names or ())
     rows = np.zeros(len(group[columns[0]]), dtype)
-    for column in columns:
-        rows[column] = group[column][()]
+    for name in columns:
+        column = _numbers(group, name, "fiu" if dtype[name].kind == "f" else "iu")
+        if len(column) != len(rows):
+            raise ValueError(f"{group.name}/{name} has {len(column)} rows, others have {len(rows)}")
+        rows[name] = column
     return rows
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import os
 import signal
 import subprocess
 import sys
@@ -60,6 +61,12 @@ def test_audit_of_a_tampered_file_fails_with_status_1(case: Path) -> None:
         (["audit", "box.toml"], "no HDF5"),
         (["show", "none.h5"], "does not exist"),
         (["cases", "--copy", "."], "needs the name"),
+        (["run", "a" * 400], "neither a file nor a ready case"),
+        (["run", "a" * 400 + ".toml"], "File name too long"),
+        (["run", "box.toml", "-o", "a" * 400], "File name too long"),
+        (["show", "a" * 400], "does not exist"),
+        (["run", "box.toml", "-o", "box.toml", "--replace"], "is what this command reads"),
+        (["run", "box.toml", "--picture", "box.png", "-o", "./box.png", "--replace"], "the history's name too"),
     ],
 )
 def test_bad_input_is_one_sentence_and_status_2(
@@ -71,6 +78,34 @@ def test_bad_input_is_one_sentence_and_status_2(
     assert part in err and err.startswith("wavekin: ") and err.count("\n") == 1 and "Traceback" not in err
     assert Path("there.h5").read_text() == "precious"
     assert sorted(p.name for p in case.parent.iterdir()) == ["box.toml", "there.h5"]
+
+
+def test_replace_never_takes_an_input_or_a_device(case: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    Path("flux.csv").write_text("u,f\n0,0\n1,0.5\n")
+    Path("table.toml").write_text(BOX.replace('name = "burgers"', 'table = "flux.csv"'))
+    os.mkfifo("pipe")
+    assert main(["run", "box.toml", "--quiet"]) == 0
+    Path("cells.csv").write_text("edge\n0\n1\n")
+    before = {path.name: path.read_bytes() for path in case.parent.iterdir() if path.is_file()}
+    for words in (
+        ["run", "table.toml", "-o", "flux.csv", "--replace"],
+        ["run", "box.toml", "-o", "pipe", "--replace"],
+        ["report", "box.h5", "-o", "box.h5", "--replace"],
+        ["sample", "box.h5", "--cells", "cells.csv", "--times", "1", "-o", "cells.csv", "--replace"],
+    ):
+        assert main(words) == 2
+        assert capsys.readouterr().err.count("\n") == 1
+    assert {path.name: path.read_bytes() for path in case.parent.iterdir() if path.is_file()} == before
+    assert Path("pipe").is_fifo()
+
+
+def test_title_that_the_terminal_cannot_show_is_no_fault(case: Path) -> None:
+    case.write_text('title = "Flu\u00df \u03a9"\n' + BOX, encoding="utf-8")
+    done = subprocess.run(
+        [sys.executable, "-m", "wavekin.io", "run", "box.toml"], capture_output=True, cwd=case.parent,
+        env={**os.environ, "PYTHONIOENCODING": "ascii"},
+    )  # fmt: skip
+    assert done.returncode == 0 and b"Flu\\xdf \\u03a9" in done.stdout and not done.stderr
 
 
 @pytest.mark.parametrize("words", [[], ["fly"], ["run"], ["run", "box.toml", "--fast"]])
@@ -129,7 +164,6 @@ def test_cases_are_listed_shown_and_copied(case: Path, capsys: pytest.CaptureFix
 
 
 def test_progress_shows_on_a_terminal_and_nowhere_else(case: Path) -> None:
-    import os
     import pty
 
     code = "from wavekin.io.progress import Progress\nwith Progress(5.0) as bar:\n    bar(2.5, 7, 100)\n"
