@@ -25,12 +25,15 @@ STROKES: dict[str, tuple[str, float, Any]] = {
     "shock": ("#20476b", 1.9, "solid"),
     "fan": ("#c2571a", 0.55, "solid"),
     "contact": ("#3f8f6b", 1.3, (0, (5, 3))),
+    "fixture": ("#7b4a8e", 1.6, (0, (7, 2, 1, 2))),
 }
 #: Figures with more fronts than this hold them as one image inside the vector file.
 RASTER_FROM = 20_000
-#: Fronts weaker than this share of the states' span are drawn only where they cross one of as many even states, so
+#: Fan fronts weaker than this share of the states' span are drawn only where they cross one of as many even states, so
 #: that fans look the same at every resolution: as contours of the state.
 CONTOURS = 48
+#: The same holds for all other fronts where there are more of them than this.
+ALL_UP_TO = 60_000
 
 
 @contextmanager
@@ -95,11 +98,13 @@ def _cut(lines: NDArray[np.float64], a: float, b: float) -> NDArray[np.float64]:
 
 
 def drawn(history: History) -> NDArray[np.bool_]:
-    """Return which fronts a picture shows: the strong ones, and of the weak ones those at even states."""
+    """Return which fronts a picture shows: weak ones in fans only at even states, all others if not too many."""
     fronts = history.fronts
     low, span = float(history.levels[0]), float(np.ptp(history.levels)) or 1.0
     cells = [np.floor((fronts[side] - low) / span * CONTOURS + 0.5) for side in ("left", "right")]
-    return np.asarray(cells[0] != cells[1])
+    crossing = cells[0] != cells[1]
+    others = fronts["kind"] != KINDS.index("fan")
+    return np.asarray(crossing | others if others.sum() <= ALL_UP_TO else crossing)
 
 
 def draw_fronts(axes: Axes, history: History, legend: bool = True) -> None:
