@@ -243,7 +243,7 @@ def ancestry(history: History, line: Lineage, title: str = "") -> Figure:
     for which, face in ((line.shares * line.shares.sum() > 0.0, "#111111"), (line.shares * line.shares.sum() < 0, "w")):
         look = {"s": 90.0 * size[which], "facecolors": face, "edgecolors": "#111111", "clip_on": False, "zorder": 6}
         axes.scatter(places[which], np.zeros(int(which.sum())), **look)
-    dot = {"marker": "o", "linestyle": "none", "markeredgecolor": "#111111"}
+    dot: dict[str, Any] = {"marker": "o", "linestyle": "none", "markeredgecolor": "#111111"}
     handles.append(Line2D([], [], color="#111111", label="where its jump comes from", **dot))
     if line.lost_fan is not None:
         axes.plot(*line.lost_fan[::-1], marker="D", markersize=7, color="#ffffff", markeredgecolor="#111111", zorder=7)
